@@ -1,0 +1,1 @@
+"""What the records of a book mean: forwards, volatilities and correlations of contracts, time and discounting."""

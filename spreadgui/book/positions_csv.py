@@ -1,0 +1,100 @@
+"""Positions as CSV: a header row of field keys in any order, then one position a line.
+
+Volatilities and correlations are decimals, numbers have a decimal point, days are written 2027-01-15. Only the needed
+fields must have a column; ratios left empty are 1, a strike left empty is 0.
+"""
+
+from __future__ import annotations
+
+import codecs
+import csv
+from collections.abc import Iterator, Sequence
+from pathlib import Path
+
+from spreadgui.book.entries import EntryError, Value, quoted
+from spreadgui.book.faults import BookError, Fault
+from spreadgui.book.fields import BY_KEY, FIELDS, Field
+from spreadgui.book.reading import read_bytes
+from spreadgui.book.records import Position
+
+
+def read_positions(path: Path) -> tuple[Position, ...]:
+    """The positions in the CSV file at `path`; raises BookError with every fault otherwise."""
+    return parse_positions(read_bytes(path))
+
+
+def parse_positions(data: bytes) -> tuple[Position, ...]:
+    """The positions written in `data` (UTF-8, with or without a byte order mark); raises BookError otherwise."""
+    numbered = list(_numbered_rows(_text(data)))
+    if not numbered:
+        raise BookError([Fault("", "the file is empty")])
+    (header_line, header), *rows = numbered
+    fields = _fields_of(header, header_line)
+    faults: list[Fault] = []
+    positions = [_position(line, row, fields, faults) for line, row in rows]
+    if faults:
+        raise BookError(faults)
+    return tuple(positions)
+
+
+def _text(data: bytes) -> str:
+    try:
+        text = data.removeprefix(codecs.BOM_UTF8).decode()
+    except UnicodeDecodeError as error:
+        line = data[: error.start].count(b"\n") + 1
+        raise BookError([Fault(f"line {line}", "this is not text in UTF-8, so not a list of positions")]) from None
+    if "\0" in text:
+        raise BookError([Fault("", "this is not text, so not a list of positions")])
+    return text
+
+
+def _numbered_rows(text: str) -> Iterator[tuple[int, list[str]]]:
+    """Each line that holds anything, with the number it has in the file."""
+    reader = csv.reader(text.splitlines(keepends=True), strict=True)
+    line = 1
+    try:
+        for row in reader:
+            if any(cell.strip() for cell in row):
+                yield line, row
+            line = reader.line_num + 1
+    except csv.Error as error:
+        raise BookError([Fault(f"line {line}", f"the quoting of this line cannot be read: {error}")]) from None
+
+
+def _fields_of(header: Sequence[str], line: int) -> list[Field]:
+    keys = [heading.strip().lower() for heading in header]
+    where = f"line {line}"
+    faults = [
+        Fault(where, f"{quoted(heading)} is not a heading of a list of positions")
+        for key, heading in zip(keys, header, strict=True)
+        if key not in BY_KEY
+    ]
+    faults += [Fault(where, f"the heading {key} stands twice") for key in dict.fromkeys(keys) if keys.count(key) > 1]
+    faults += [
+        Fault(where, f"the heading {field.key} is missing")
+        for field in FIELDS
+        if field.needed and field.key not in keys
+    ]
+    if faults:
+        raise BookError(faults)
+    return [BY_KEY[key] for key in keys]
+
+
+def _position(line: int, row: Sequence[str], fields: Sequence[Field], faults: list[Fault]) -> Position:
+    """The position of one line; what is wrong with it is added to `faults`."""
+    if len(row) > len(fields):
+        faults.append(Fault(f"line {line}", f"has {len(row)} cells under {len(fields)} headings"))
+    values: dict[str, Value] = {}
+    padded = [*row, *[""] * (len(fields) - len(row))]
+    for field, text in zip(fields, padded, strict=False):
+        try:
+            values[field.key] = _read(field, text)
+        except EntryError as error:
+            faults.append(Fault(f"line {line}, {field.key}", str(error)))
+    return Position(**values)  # type: ignore[arg-type]  # each Field reads the type that its key has in Position
+
+
+def _read(field: Field, text: str) -> Value:
+    if field.needed and not text.strip():
+        raise EntryError("is empty, and is needed")
+    return field.entry.read(text)

@@ -1,0 +1,91 @@
+"""Holds parsed JSON against the record types and tells every difference with its place.
+
+msgspec reads a right book at full speed and stops at the first fault of a wrong one; this slower walk then finds them
+all, so that a person mends a file in one round.
+"""
+
+from __future__ import annotations
+
+import datetime
+import json
+import math
+import types
+import typing
+from collections.abc import Iterator
+from typing import Any
+
+import msgspec
+
+from spreadgui.book.entries import quoted
+from spreadgui.book.faults import Fault
+
+_EXPECTED = {
+    str: "words in quotes",
+    float: "a number",
+    int: "a whole number",
+    datetime.date: 'a day written as "2027-01-15"',
+}
+
+
+def faults(value: Any, record: type[msgspec.Struct], where: str = "") -> Iterator[Fault]:
+    """Every difference between the parsed `value` and the type `record`, in the order of the record's fields."""
+    if not isinstance(value, dict):
+        yield Fault(where, f"expected an object in braces, got {_shown(value)}")
+        return
+    hints = typing.get_type_hints(record)
+    fields = {field.encode_name: field for field in msgspec.structs.fields(record)}
+    for name, field in fields.items():
+        place = f"{where}.{name}" if where else name
+        if name in value:
+            yield from _value_faults(value[name], hints[field.name], place)
+        elif field.required:
+            yield Fault(place, "is missing")
+    for name in value.keys() - fields.keys():
+        yield Fault(f"{where}.{_key(name)}" if where else _key(name), "is not an entry that this file has")
+
+
+def _value_faults(value: Any, expected: Any, where: str) -> Iterator[Fault]:
+    if typing.get_origin(expected) is tuple:
+        item = typing.get_args(expected)[0]
+        if not isinstance(value, list):
+            yield Fault(where, f"expected a list in brackets, got {_shown(value)}")
+            return
+        for index, one in enumerate(value):
+            yield from faults(one, item, f"{where}[{index}]")
+        return
+    if not _fits(value, expected):
+        yield Fault(where, f"expected {_words(expected)}, got {_shown(value)}")
+
+
+def _fits(value: Any, expected: Any) -> bool:
+    if isinstance(value, float) and not math.isfinite(value):
+        return False
+    try:
+        msgspec.convert(value, expected)
+    except (msgspec.ValidationError, OverflowError):
+        return False
+    return True
+
+
+def _words(expected: Any) -> str:
+    origin = typing.get_origin(expected)
+    if origin is typing.Literal:
+        choices = [f'"{choice}"' for choice in typing.get_args(expected)]
+        return choices[0] if len(choices) == 1 else f"one of {', '.join(choices)}"
+    if origin in (typing.Union, types.UnionType):
+        return " or ".join(_words(part) for part in typing.get_args(expected) if part is not type(None)) + " or null"
+    return _EXPECTED.get(expected, "something else")
+
+
+def _shown(value: Any) -> str:
+    if isinstance(value, str):
+        return quoted(value)
+    if isinstance(value, dict):
+        return "an object in braces"
+    if isinstance(value, list):
+        return "a list in brackets"
+    return quoted(json.dumps(value))[1:-1]
+
+
+def _key(name: str) -> str:
+    return quoted(name)[1:-1]

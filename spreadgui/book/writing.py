@@ -1,0 +1,118 @@
+"""From a book to its file: the same book is always the same bytes, and the old file stays whole until the new one is.
+
+Every record stands on a line of its own and every key in the order of its declaration, so that two saves differ only
+in the lines where the book does.
+"""
+
+from __future__ import annotations
+
+import contextlib
+import functools
+import os
+import tempfile
+import typing
+from collections.abc import Iterator
+from pathlib import Path
+from typing import Any
+
+import msgspec
+
+from spreadgui.book.records import Book
+
+_encode = msgspec.json.Encoder().encode
+
+
+def book_bytes(book: Book) -> bytes:
+    """The file's content for `book`, in UTF-8, ending with a line break."""
+    return b"\n".join(_lines(book, "")) + b"\n"
+
+
+def write_book(book: Book, path: Path) -> None:
+    """Put `book` in the file at `path`, whole or not at all.
+
+    The content goes to a new file in the same folder, to the disk, and only then under the name. Raises OSError when
+    the folder or the disk refuses; the file that was there is then untouched.
+    """
+    write_whole(path, book_bytes(book))
+
+
+def write_whole(path: Path, data: bytes) -> None:
+    """Put `data` in the file at `path`, whole or not at all; a link is followed, the file's permissions are kept."""
+    target = path.resolve()
+    handle, name = tempfile.mkstemp(dir=target.parent, prefix=f".{target.name}.", suffix=".new")
+    try:
+        with os.fdopen(handle, "wb") as stream:
+            stream.write(data)
+            stream.flush()
+            os.fsync(stream.fileno())
+        os.chmod(name, _permissions(target))
+        os.replace(name, target)
+    except BaseException:
+        with contextlib.suppress(OSError):
+            os.unlink(name)
+        raise
+    _settle_folder(target.parent)
+
+
+def _permissions(target: Path) -> int:
+    try:
+        return target.stat().st_mode & 0o777
+    except FileNotFoundError:
+        mask = os.umask(0)
+        os.umask(mask)
+        return 0o666 & ~mask
+
+
+def _settle_folder(folder: Path) -> None:
+    # Only this makes the new name survive a power cut; where a system cannot open a folder, the name is safe enough.
+    with contextlib.suppress(OSError):
+        handle = os.open(folder, os.O_RDONLY)
+        try:
+            os.fsync(handle)
+        finally:
+            os.close(handle)
+
+
+def _lines(record: msgspec.Struct, indent: str) -> Iterator[bytes]:
+    """The record opened up: one line an entry, and lists of records one line a record."""
+    entries = list(_entries(record))
+    yield indent.encode() + b"{"
+    for index, (key, value) in enumerate(entries):
+        comma = b"," if index + 1 < len(entries) else b""
+        opening = f'{indent}  "{key}": '.encode()
+        if isinstance(value, tuple):
+            yield opening + b"["
+            yield from _items(value, indent + "    ")
+            yield f"{indent}  ]".encode() + comma
+        else:
+            yield opening + _encode(value) + comma
+    yield indent.encode() + b"}"
+
+
+def _items(records: tuple[msgspec.Struct, ...], indent: str) -> Iterator[bytes]:
+    for index, record in enumerate(records):
+        comma = b"," if index + 1 < len(records) else b""
+        if _holds_records(type(record)) and any(isinstance(value, tuple) for _, value in _entries(record)):
+            *opened, last = _lines(record, indent)
+            yield from opened
+            yield last + comma
+        else:
+            yield indent.encode() + msgspec.json.format(_encode(record), indent=0) + comma
+
+
+def _entries(record: msgspec.Struct) -> Iterator[tuple[str, Any]]:
+    omit = record.__struct_config__.omit_defaults
+    for field in _fields(type(record)):
+        value = getattr(record, field.name)
+        if not (omit and value == field.default):
+            yield field.encode_name, value
+
+
+@functools.cache
+def _fields(record: type[msgspec.Struct]) -> tuple[msgspec.structs.FieldInfo, ...]:
+    return msgspec.structs.fields(record)
+
+
+@functools.cache
+def _holds_records(record: type[msgspec.Struct]) -> bool:
+    return any(typing.get_origin(hint) is tuple for hint in typing.get_type_hints(record).values())

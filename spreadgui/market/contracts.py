@@ -1,0 +1,195 @@
+"""A position's legs resolved: the numbers a formula needs, from the row's own marks or else from the book's."""
+
+from __future__ import annotations
+
+import datetime
+import math
+from dataclasses import dataclass, field
+from enum import IntEnum
+
+from spreadgui.book.records import Position
+from spreadgui.market.quotes import Quotes, UnknownMarkError
+from spreadgui.market.time import discount_factor, years
+
+_NAN = math.nan
+
+
+class Shape(IntEnum):
+    """Which legs a position has."""
+
+    SPREAD = 0
+    LONG_LEG_ONLY = 1
+    SHORT_LEG_ONLY = 2
+
+
+class Readiness(IntEnum):
+    """Whether a position can be priced: as it is, not before a gap is filled, or not before a mistake is mended."""
+
+    READY = 0
+    INCOMPLETE = 1
+    REFUSED = 2
+
+
+@dataclass(frozen=True)
+class Trouble:
+    """Why a position cannot be priced: a sentence, and the field of the position where to mend it."""
+
+    readiness: Readiness
+    field: str
+    sentence: str
+
+
+@dataclass
+class ResolvedPosition:
+    """The inputs of one position; NaN where the position has none or it could not be found.
+
+    Forwards are the markets' own, before the ratios. `years` may be below zero when the option is past.
+    """
+
+    shape: Shape = Shape.SPREAD
+    unit: str = ""
+    forward_long: float = _NAN
+    forward_short: float = _NAN
+    vol_long: float = _NAN
+    vol_short: float = _NAN
+    correlation: float = _NAN
+    years: float = _NAN
+    discount: float = _NAN
+    troubles: list[Trouble] = field(default_factory=list)
+
+
+def resolve(position: Position, quotes: Quotes, valuation_date: datetime.date, zero_rate: float) -> ResolvedPosition:
+    """The inputs of `position`, with everything that stands in the way of pricing it listed in the order of the row."""
+    resolved = ResolvedPosition(shape=_shape(position))
+    if position.quantity is None:
+        _incomplete(resolved, "quantity", "the quantity is missing")
+    _resolve_leg(resolved, position, quotes, "long")
+    _resolve_leg(resolved, position, quotes, "short")
+    _resolve_correlation(resolved, position, quotes)
+    _resolve_time(resolved, position, valuation_date, zero_rate)
+    _check_numbers(resolved, position)
+    return resolved
+
+
+def _shape(position: Position) -> Shape:
+    has_long = bool(position.long_leg) or position.own_forward_long is not None
+    has_short = bool(position.short_leg) or position.own_forward_short is not None
+    if has_long == has_short:
+        return Shape.SPREAD
+    return Shape.LONG_LEG_ONLY if has_long else Shape.SHORT_LEG_ONLY
+
+
+def _resolve_leg(resolved: ResolvedPosition, position: Position, quotes: Quotes, side: str) -> None:
+    absent = Shape.SHORT_LEG_ONLY if side == "long" else Shape.LONG_LEG_ONLY
+    if resolved.shape is absent:
+        return
+    leg, delivery = getattr(position, f"{side}_leg"), getattr(position, f"{side}_delivery")
+    forward, vol = getattr(position, f"own_forward_{side}"), getattr(position, f"own_vol_{side}")
+    if leg:
+        _take_unit(resolved, quotes, leg)
+    if forward is None or (vol is None and position.kind != "forward"):
+        try:
+            forward, vol = _marked(quotes, leg, delivery, side, forward, vol)
+        except UnknownMarkError as error:
+            _trouble_of(resolved, error, _leg_field(error, side, leg, delivery, forward))
+    setattr(resolved, f"forward_{side}", _NAN if forward is None else forward)
+    setattr(resolved, f"vol_{side}", _NAN if vol is None else vol)
+
+
+def _marked(
+    quotes: Quotes, leg: str, delivery: str, side: str, forward: float | None, vol: float | None
+) -> tuple[float, float]:
+    """The leg's forward and volatility, the row's own where it has them."""
+    if not leg:
+        what = "leg" if forward is None else "volatility"
+        raise UnknownMarkError(f"the {side} {what} is missing", missing=True)
+    mark = quotes.mark(leg, delivery)
+    return mark.forward if forward is None else forward, mark.volatility if vol is None else vol
+
+
+def _leg_field(error: UnknownMarkError, side: str, leg: str, delivery: str, forward: float | None) -> str:
+    if not leg:
+        return f"{side}_leg" if forward is None else f"own_vol_{side}"
+    return f"{side}_delivery" if error.missing or "delivery" in str(error) else f"{side}_leg"
+
+
+def _take_unit(resolved: ResolvedPosition, quotes: Quotes, leg: str) -> None:
+    """The payoff is counted in the unit of the long leg, of the only leg in an outright."""
+    if not resolved.unit:
+        try:
+            resolved.unit = quotes.market(leg).unit
+        except UnknownMarkError:
+            return
+
+
+def _resolve_correlation(resolved: ResolvedPosition, position: Position, quotes: Quotes) -> None:
+    if resolved.shape is not Shape.SPREAD:
+        return
+    if position.own_correlation is not None:
+        resolved.correlation = position.own_correlation
+    elif position.long_leg and position.short_leg:
+        try:
+            resolved.correlation = quotes.correlation(
+                position.long_leg, position.long_delivery, position.short_leg, position.short_delivery
+            )
+        except UnknownMarkError as error:
+            _correlation_trouble(resolved, position, error)
+    elif position.kind != "forward" and not resolved.troubles:
+        _incomplete(resolved, "own_correlation", "the correlation is missing")
+
+
+def _correlation_trouble(resolved: ResolvedPosition, position: Position, error: UnknownMarkError) -> None:
+    if position.kind == "forward":
+        return  # needs no correlation
+    if error.missing:
+        _incomplete(resolved, "own_correlation", str(error))
+    elif not resolved.troubles:  # otherwise the leg at fault has been told of already
+        _refused(resolved, "own_correlation", f"the correlation cannot be looked up: {error}")
+
+
+def _resolve_time(
+    resolved: ResolvedPosition, position: Position, valuation_date: datetime.date, zero_rate: float
+) -> None:
+    if position.expiry is None:
+        _incomplete(resolved, "expiry", "the expiry is missing")
+        return
+    resolved.years = years(valuation_date, position.expiry)
+    resolved.discount = discount_factor(zero_rate, resolved.years)
+    if resolved.years < 0:
+        _refused(resolved, "expiry", f"expired on {position.expiry}, before the valuation date {valuation_date}")
+    elif not math.isfinite(resolved.discount):
+        _refused(resolved, "expiry", f"the zero rate {zero_rate:g} gives no discount factor for this expiry")
+
+
+def _check_numbers(resolved: ResolvedPosition, position: Position) -> None:
+    """What a record can hold and a lognormal formula cannot take."""
+    for side in ("long", "short"):
+        forward, vol = getattr(resolved, f"forward_{side}"), getattr(resolved, f"vol_{side}")
+        if forward <= 0 and position.kind != "forward":
+            _refused(
+                resolved,
+                f"own_forward_{side}",
+                f"the {side} forward is {forward:g}; lognormal formulas need one above zero",
+            )
+        if vol < 0:
+            _refused(resolved, f"own_vol_{side}", f"the {side} volatility is {vol:g}, below zero")
+        if not getattr(position, f"{side}_ratio") > 0:
+            _refused(
+                resolved, f"{side}_ratio", f"the {side} ratio is {getattr(position, f'{side}_ratio'):g}, not above zero"
+            )
+    if abs(resolved.correlation) > 1:
+        _refused(resolved, "own_correlation", f"the correlation is {resolved.correlation:g}, beyond 1 or −1")
+    if position.quantity is not None and position.quantity < 0:
+        _refused(resolved, "quantity", f"the quantity is {position.quantity:g}; let the side say short instead")
+
+
+def _trouble_of(resolved: ResolvedPosition, error: UnknownMarkError, where: str) -> None:
+    (_incomplete if error.missing else _refused)(resolved, where, str(error))
+
+
+def _incomplete(resolved: ResolvedPosition, where: str, sentence: str) -> None:
+    resolved.troubles.append(Trouble(Readiness.INCOMPLETE, where, sentence))
+
+
+def _refused(resolved: ResolvedPosition, where: str, sentence: str) -> None:
+    resolved.troubles.append(Trouble(Readiness.REFUSED, where, sentence))

@@ -1,0 +1,90 @@
+"""The marks of a book, looked up: what does this contract stand at, and how do two of them move together."""
+
+from __future__ import annotations
+
+import math
+from collections import Counter
+from dataclasses import dataclass
+
+from spreadgui.book.entries import is_delivery, quoted
+from spreadgui.book.records import Book, Mark, Market
+from spreadgui.market.time import delivery_years_apart
+
+
+class UnknownMarkError(LookupError):
+    """The book says nothing of a contract or a pair; `missing` tells a gap to fill from a mistake to mend."""
+
+    def __init__(self, sentence: str, *, missing: bool = False) -> None:
+        super().__init__(sentence)
+        self.missing = missing
+
+
+@dataclass(frozen=True)
+class Quotes:
+    """The marks of one book, indexed. Build it anew when the marks change; it never follows them."""
+
+    _markets: dict[str, Market]
+    _marks: dict[str, dict[str, Mark]]
+    _correlations: dict[frozenset[str], float]
+    _twice: frozenset[str]
+
+    @staticmethod
+    def of(book: Book) -> Quotes:
+        """The index over the marks of `book`."""
+        names = Counter(market.name for market in book.markets)
+        return Quotes(
+            {market.name: market for market in book.markets},
+            {market.name: {mark.delivery: mark for mark in market.marks} for market in book.markets},
+            {frozenset((pair.first, pair.second)): pair.correlation for pair in book.correlations},
+            frozenset(name for name, count in names.items() if count > 1),
+        )
+
+    def market(self, name: str) -> Market:
+        """The market called `name`; raises UnknownMarkError with the reason where there is not exactly one."""
+        if name in self._twice:
+            raise UnknownMarkError(f"the market {quoted(name)} is defined twice")
+        try:
+            return self._markets[name]
+        except KeyError:
+            raise UnknownMarkError(f"there is no market {quoted(name)} in this book") from None
+
+    def mark(self, name: str, delivery: str) -> Mark:
+        """The mark of a market's delivery; raises UnknownMarkError where there is none."""
+        market = self.market(name)
+        if not delivery:
+            raise UnknownMarkError(f"the delivery of {market.name} is missing", missing=True)
+        if not is_delivery(delivery):
+            raise UnknownMarkError(f"expected a delivery month written as 2027-01, got {quoted(delivery)}")
+        try:
+            return self._marks[name][delivery]
+        except KeyError:
+            raise UnknownMarkError(f"{market.name} has no mark for {delivery}", missing=True) from None
+
+    def correlation(self, first: str, first_delivery: str, second: str, second_delivery: str) -> float:
+        """The correlation of two contracts, as a decimal.
+
+        Two deliveries of one market: exp(-tie strength * years apart). Two markets: their correlation, for
+        deliveries apart times exp(-(mean of the two tie strengths) * years apart). Raises UnknownMarkError where the
+        book holds no correlation of the two markets.
+        """
+        for delivery in (first_delivery, second_delivery):
+            if delivery and not is_delivery(delivery):
+                raise UnknownMarkError(f"expected a delivery month written as 2027-01, got {quoted(delivery)}")
+        apart = delivery_years_apart(first_delivery, second_delivery) if first_delivery and second_delivery else 0.0
+        strengths = self.market(first).tie_strength, self.market(second).tie_strength
+        tie = math.exp(-0.5 * (strengths[0] + strengths[1]) * apart)
+        if first == second:
+            return tie
+        try:
+            return self._correlations[frozenset((first, second))] * tie
+        except KeyError:
+            raise UnknownMarkError(f"the book has no correlation of {first} and {second}", missing=True) from None
+
+
+def quantity_unit(unit: str) -> str:
+    """What a price unit is counted by: "MWh" of "CRN/MWh"; empty where the unit does not say.
+
+    >>> quantity_unit("CRN/t CO2")
+    't CO2'
+    """
+    return unit.partition("/")[2].strip()

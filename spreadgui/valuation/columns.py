@@ -1,0 +1,264 @@
+"""The column register: every column of the grid and of the value table, each declared once.
+
+A column says how it is read from the slate and the live results (`numbers` or `words`), what its screen heading, unit
+and scaling are, and which field of the position typing into it sets. Input columns take their reading rules from
+`book.fields`; a new computed column is one more entry in COLUMNS.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from spreadgui.book.fields import BY_KEY, Field
+from spreadgui.pricing.methods import METHODS, method_of
+from spreadgui.valuation.results import LiveResults, State
+from spreadgui.valuation.shown import number_text, trimmed_text
+from spreadgui.valuation.slate import FloatArray, Slate
+
+Numbers = Callable[[Slate, LiveResults], FloatArray]
+Words = Callable[[Slate, LiveResults, int], str]
+
+
+@dataclass(frozen=True)
+class Column:
+    """One column. Exactly one of `numbers` (whole column, code units) and `words` (one cell) reads it.
+
+    On screens a number is multiplied by `scale` and shown with `decimals` (at least `least_decimals` where those
+    differ). `computed` columns show the state of their row when it is not current. `own` columns show what the row
+    uses and, typed into, set the row's own mark.
+    """
+
+    key: str
+    heading: str
+    help: str
+    unit: str = ""
+    field: Field | None = None
+    numbers: Numbers | None = None
+    words: Words | None = None
+    scale: float = 1.0
+    decimals: int = 2
+    least_decimals: int | None = None
+    computed: bool = False
+    pinned: bool = False
+    on_screen: bool = True
+
+    @property
+    def numeric(self) -> bool:
+        return self.numbers is not None
+
+    @property
+    def own(self) -> bool:
+        """Whether typing into the column sets an own mark that wins over the book's."""
+        return self.field is not None and self.field.key.startswith("own_")
+
+    def shown(self, value: float) -> str:
+        """A number of this column as the screen writes it."""
+        least = self.decimals if self.least_decimals is None else self.least_decimals
+        return trimmed_text(value * self.scale, self.decimals, least)
+
+
+def _field_words(key: str) -> Words:
+    entry = BY_KEY[key].entry
+    return lambda slate, _results, row: entry.text(getattr(slate.book.positions[row], key))
+
+
+def _input(key: str) -> Numbers:
+    return lambda slate, _results: slate.values(key)
+
+
+def _output(key: str) -> Numbers:
+    return lambda _slate, results: results.values(key)
+
+
+def _for_position(key: str) -> Numbers:
+    return lambda slate, results: slate.values("quantity") * results.values(key)
+
+
+def _gap(key: str) -> Numbers:
+    return lambda _slate, results: results.values(key) - results.values("yardstick")
+
+
+def _worded(key: str, *, unit: str = "", pinned: bool = False) -> Column:
+    field = BY_KEY[key]
+    return Column(key, field.heading, field.help, unit, field, words=_field_words(key), pinned=pinned)
+
+
+def _entered(key: str, unit: str, decimals: int, least: int, numbers: Numbers) -> Column:
+    field = BY_KEY[key]
+    return Column(key, field.heading, field.help, unit, field, numbers=numbers, decimals=decimals, least_decimals=least)
+
+
+def _own_mark(key: str, field_key: str, unit: str, scale: float, decimals: int, least: int) -> Column:
+    field = BY_KEY[field_key]
+    return Column(
+        key, field.heading, field.help, unit, field,
+        numbers=_input(key), scale=scale, decimals=decimals, least_decimals=least,
+    )  # fmt: skip
+
+
+def _computed(
+    key: str, heading: str, help: str, numbers: Numbers, unit: str = "", *, scale: float = 1.0, decimals: int = 4,
+    pinned: bool = False, on_screen: bool = True,
+) -> Column:  # fmt: skip
+    return Column(
+        key, heading, help, unit, numbers=numbers, scale=scale, decimals=decimals,
+        computed=True, pinned=pinned, on_screen=on_screen,
+    )  # fmt: skip
+
+
+def _by_method() -> list[Column]:
+    return [
+        _computed(
+            method.key, method.name, f"Unit value by {method.name}. {method.applies}", _output(method.key), "unit value"
+        )
+        for method in METHODS
+    ]
+
+
+def _gaps() -> list[Column]:
+    return [
+        _computed(
+            f"{method.key}_gap",
+            f"{method.name} gap",
+            f"Formula gap: the unit value by {method.name} minus the Yardstick's.",
+            _gap(method.key),
+            "unit value",
+            decimals=5,
+            on_screen=method.key in ("kirk", "bjerksund_stensland"),
+        )
+        for method in METHODS
+        if not method.reference
+    ]
+
+
+# key, heading, position's heading on screens, screen scaling, words for the scaling, help
+_SENSITIVITIES = (
+    ("delta_long", "Delta long", 1.0, "units", "Change of value per 1.00 of the long market's forward."),
+    ("delta_short", "Delta short", 1.0, "units", "Change of value per 1.00 of the short market's forward."),
+    ("gamma_long", "Gamma long", 1.0, "units per 1.00", "Change of the long delta per 1.00 of the long forward."),
+    ("gamma_short", "Gamma short", 1.0, "units per 1.00", "Change of the short delta per 1.00 of the short forward."),
+    ("gamma_cross", "Cross-gamma", 1.0, "units per 1.00", "Change of the long delta per 1.00 of the short forward."),
+    ("vega_long", "Vega long", 0.01, "per 1 vol point", "Change of value per point of the long leg's volatility."),
+    ("vega_short", "Vega short", 0.01, "per 1 vol point", "Change of value per point of the short leg's volatility."),
+    ("correlation_sensitivity", "Correlation sensitivity", 0.01, "per 0.01", "Change of value per 0.01 of it."),
+    ("theta", "Theta", 1 / 365, "per calendar day",
+     "Change of value as one calendar day passes, forwards, volatilities and zero rate standing still."),
+)  # fmt: skip
+
+
+def _position_sensitivities() -> list[Column]:
+    return [
+        _computed(
+            f"position_{key}",
+            heading,
+            f"{about} For the whole position, by the book's method.",
+            _for_position(key),
+            unit,
+            scale=scale,
+            decimals=2 if key.startswith("gamma") else 0,
+        )
+        for key, heading, scale, unit, about in _SENSITIVITIES
+    ]
+
+
+def _unit_sensitivities() -> list[Column]:
+    return [
+        _computed(
+            key,
+            heading,
+            f"{about} Per unit of payoff, by the book's method.",
+            _output(key),
+            unit,
+            scale=scale,
+            decimals=5,
+            on_screen=False,
+        )
+        for key, heading, scale, unit, about in _SENSITIVITIES
+    ]
+
+
+def _state_word(_slate: Slate, results: LiveResults, row: int) -> str:
+    return State(int(results.state[row])).word
+
+
+def _reason(_slate: Slate, results: LiveResults, row: int) -> str:
+    return results.reason(row)
+
+
+def _book_method(slate: Slate, _results: LiveResults, _row: int) -> str:
+    return method_of(slate.book.method).name
+
+
+COLUMNS: tuple[Column, ...] = (
+    _worded("name", pinned=True),
+    _computed("position_value", "Value", "Quantity times unit value; below zero for what the desk owes.",
+              _for_position("value"), "{currency}", decimals=0, pinned=True),
+    _worded("side"),
+    _worded("kind"),
+    _entered("quantity", "of payoff unit", 3, 0, lambda slate, _results: np.abs(slate.values("quantity"))),
+    Column("unit", "Unit", "What the payoff is quoted in: the unit of the long leg's market.",
+           words=lambda slate, _results, row: slate.units[row]),
+    _worded("long_leg"),
+    _worded("long_delivery"),
+    _entered("long_ratio", "×", 6, 2, _input("ratio_long")),
+    _worded("short_leg"),
+    _worded("short_delivery"),
+    _entered("short_ratio", "×", 6, 2, _input("ratio_short")),
+    _entered("strike", "payoff unit", 6, 2, _input("strike")),
+    _worded("expiry"),
+    _own_mark("forward_long", "own_forward_long", "market unit", 1.0, 6, 2),
+    _own_mark("forward_short", "own_forward_short", "market unit", 1.0, 6, 2),
+    _own_mark("vol_long", "own_vol_long", "% a year", 100.0, 6, 1),
+    _own_mark("vol_short", "own_vol_short", "% a year", 100.0, 6, 1),
+    _own_mark("correlation", "own_correlation", "%", 100.0, 6, 1),
+    Column("years", "Years", "Time from the valuation date to the expiry, actual days over 365.", "ACT/365F",
+           numbers=_input("years"), decimals=3),
+    Column("discount", "Discount factor", "Value today of one unit of money at the expiry.", "",
+           numbers=_input("discount"), decimals=5),
+    *_by_method(),
+    *_gaps(),
+    *_position_sensitivities(),
+    *_unit_sensitivities(),
+    _worded("note"),
+    Column("state", "State", "Current, pricing, incomplete or refused.", words=_state_word),
+    Column("reason", "Reason", "Why the row is incomplete or refused.", words=_reason),
+    Column("method", "Method", "The method of the value and the sensitivities.", words=_book_method, on_screen=False),
+)  # fmt: skip
+
+BY_COLUMN_KEY: dict[str, Column] = {column.key: column for column in COLUMNS}
+SCREEN_COLUMNS: tuple[Column, ...] = tuple(column for column in COLUMNS if column.on_screen)
+VALUE_TABLE: tuple[str, ...] = (
+    "name", "side", "kind", "quantity", "unit", "long_leg", "long_delivery", "long_ratio",
+    "short_leg", "short_delivery", "short_ratio", "strike", "expiry",
+    "forward_long", "forward_short", "vol_long", "vol_short", "correlation", "years", "discount",
+    *(method.key for method in METHODS),
+    "method", "position_value",
+    *(key for key, *_ in _SENSITIVITIES),
+    *(f"position_{key}" for key, *_ in _SENSITIVITIES),
+    "state", "reason",
+)  # fmt: skip
+
+
+def exact_text(column: Column, slate: Slate, results: LiveResults, numbers: FloatArray | None, row: int) -> str:
+    """A cell for files: numbers in code units to the last digit, empty where there is none."""
+    if numbers is None:
+        assert column.words is not None
+        return column.words(slate, results, row)
+    value = float(numbers[row])
+    return repr(value) if np.isfinite(value) else ""
+
+
+def screen_text(column: Column, slate: Slate, results: LiveResults, numbers: FloatArray | None, row: int) -> str:
+    """A cell for screens; a computed one whose row is not current is empty, its state being told otherwise."""
+    if numbers is None:
+        assert column.words is not None
+        return column.words(slate, results, row)
+    return column.shown(float(numbers[row]))
+
+
+__all__ = [
+    "BY_COLUMN_KEY", "COLUMNS", "SCREEN_COLUMNS", "VALUE_TABLE", "Column", "exact_text", "number_text", "screen_text",
+]  # fmt: skip
