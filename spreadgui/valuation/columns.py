@@ -13,7 +13,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from spreadgui.book.fields import BY_KEY, Field
-from spreadgui.pricing.methods import METHODS, method_of
+from spreadgui.pricing.methods import METHODS
+from spreadgui.pricing.methods import method as method_of
 from spreadgui.valuation.results import LiveResults, State
 from spreadgui.valuation.shown import number_text, trimmed_text
 from spreadgui.valuation.slate import FloatArray, Slate
@@ -181,7 +182,8 @@ def _unit_sensitivities() -> list[Column]:
 
 
 def _state_word(_slate: Slate, results: LiveResults, row: int) -> str:
-    return State(int(results.state[row])).word
+    state = State(int(results.state[row]))
+    return state.word
 
 
 def _reason(_slate: Slate, results: LiveResults, row: int) -> str:

@@ -11,7 +11,8 @@ from numpy.typing import NDArray
 
 from spreadgui.market.contracts import Shape
 from spreadgui.pricing import black76
-from spreadgui.pricing.methods import METHODS, Method, method_of
+from spreadgui.pricing.methods import METHODS, Method
+from spreadgui.pricing.methods import method as method_of
 from spreadgui.valuation.results import OUTPUTS, SENSITIVITIES, Part, output_row
 from spreadgui.valuation.slate import INPUTS, KINDS, FloatArray, RowArray, Slate
 

@@ -7,9 +7,12 @@ from dataclasses import dataclass
 import numpy as np
 
 from spreadgui.market.contracts import Readiness
-from spreadgui.pricing.methods import METHODS, method_of
+from spreadgui.market.quotes import quantity_unit
+from spreadgui.pricing.methods import METHODS
+from spreadgui.pricing.methods import method as method_of
 from spreadgui.valuation.price import price_rows
 from spreadgui.valuation.results import SENSITIVITIES, output_row
+from spreadgui.valuation.shown import trimmed_text
 from spreadgui.valuation.slate import KINDS, Slate
 
 
@@ -31,11 +34,16 @@ class Reading:
 
     Unit values are per unit of payoff, `quantity` is signed. `sensitivities` are plain derivatives of the unit value by
     the book's method, in the order of results.SENSITIVITIES. `reason` is set, and nothing else to be relied upon, where
-    the position could not be priced.
+    the position could not be priced. `subject` is the position in words, `unit` what a unit value is counted in,
+    `method` the name of the book's method, which `unit_value` and the sensitivities come from.
     """
 
     revision: int
     row: int
+    subject: str
+    unit: str
+    currency: str
+    method: str
     quantity: float
     unit_value: float
     intrinsic: float
@@ -65,6 +73,7 @@ def read_position(slate: Slate, row: int) -> Reading:
     return Reading(
         slate.revision,
         row,
+        *_words(slate, row),
         float(slate.values("quantity")[row]),
         float(outputs[output_row("value")]),
         intrinsic_value(slate, row),
@@ -84,6 +93,15 @@ def intrinsic_value(slate: Slate, row: int) -> float:
     return cell["discount"] * payoff
 
 
+def _words(slate: Slate, row: int) -> tuple[str, str, str, str]:
+    """Subject, unit, currency and the book's method in words."""
+    position, unit = slate.book.positions[row], slate.units[row]
+    quantity = trimmed_text(abs(float(slate.values("quantity")[row])), 3)
+    held = " ".join(filter(None, (position.side, position.kind, "·", quantity, quantity_unit(unit))))
+    subject = f"{position.name or f'Position {row + 1}'} · {held}"
+    return subject, unit, slate.book.currency, method_of(slate.book.method).name
+
+
 def _method_reading(key: str, value: float, reference: float) -> MethodReading:
     method = method_of(key)
     gap = np.nan if method.reference else value - reference
@@ -95,4 +113,6 @@ def _method_reading(key: str, value: float, reference: float) -> MethodReading:
 def _unreadable(slate: Slate, row: int, reason: str) -> Reading:
     nan = float("nan")
     quantity = float(slate.values("quantity")[row])
-    return Reading(slate.revision, row, quantity, nan, nan, (), (nan,) * len(SENSITIVITIES), reason)
+    return Reading(
+        slate.revision, row, *_words(slate, row), quantity, nan, nan, (), (nan,) * len(SENSITIVITIES), reason
+    )

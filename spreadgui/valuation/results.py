@@ -100,7 +100,7 @@ class LiveResults:
         if part.revision < self._rows_moved_at:
             return part.rows[:0]
         fresh = (self._touched[part.rows] <= part.revision) & (self.state[part.rows] == State.PRICING)
-        rows = part.rows[fresh]
+        rows: RowArray = part.rows[fresh]
         self.outputs[:, rows] = part.outputs[:, fresh]
         self.state[rows] = State.CURRENT
         for row in rows.tolist():
@@ -114,7 +114,8 @@ class LiveResults:
 
     def values(self, key: str) -> FloatArray:
         """The column of one of OUTPUTS, per unit of payoff; NaN wherever the row is not current."""
-        return self.outputs[_OUTPUT_ROW[key]]
+        column: FloatArray = self.outputs[_OUTPUT_ROW[key]]
+        return column
 
     def reason(self, row: int) -> str:
         """Why a row is incomplete or refused, as one sentence; empty for the others."""

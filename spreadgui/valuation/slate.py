@@ -57,11 +57,12 @@ class Slate:
     troubles: Mapping[int, tuple[Trouble, ...]]
 
     def __len__(self) -> int:
-        return self.inputs.shape[1]
+        return len(self.units)
 
     def values(self, key: str) -> FloatArray:
         """The column of one of INPUTS."""
-        return self.inputs[_INPUT_ROW[key]]
+        column: FloatArray = self.inputs[_INPUT_ROW[key]]
+        return column
 
 
 @dataclass(frozen=True)

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from spreadgui.market.contracts import Readiness, Shape
-from spreadgui.pricing.methods import method_of
+from spreadgui.pricing.methods import method as method_of
 from spreadgui.valuation.slate import KINDS, FloatArray, Slate
 
 
@@ -56,15 +56,23 @@ class SurfaceRequest:
 class Surface:
     """`values[i, j]` in screen scaling at (`long[j]`, `short[i]`), the markets' own forwards before the ratios.
 
-    `reason` is set, and the arrays are empty, where there is no surface to draw.
+    `axes` name the two underlyings with their units, `subject` the position, `unit` the values. `current` is where the
+    marks stand now, and the value there. `boundary` (2, n) is the line on which the payoff at expiry is zero, `rings`
+    each (2, n) hold one and two standard deviations of the two forwards at the expiry; all are (long, short) points
+    and may leave the rectangle. `reason` is set, and the arrays are empty, where there is no surface to draw.
     """
 
     revision: int
     request: SurfaceRequest
+    subject: str
+    axes: tuple[str, str]
+    unit: str
     long: FloatArray
     short: FloatArray
     values: FloatArray
     current: tuple[float, float, float]
+    boundary: FloatArray
+    rings: tuple[FloatArray, ...]
     reason: str = ""
 
 
@@ -89,7 +97,52 @@ def draw_surface(slate: Slate, request: SurfaceRequest, executor: Executor | Non
     at = float(_nodes(cell, kind, request, *here, slate.book.zero_rate, None)[0, 0])
     for array in (long, short, values):
         array.setflags(write=False)
-    return Surface(slate.revision, request, long, short, values, (cell["forward_long"], cell["forward_short"], at))
+    return Surface(
+        slate.revision,
+        request,
+        *_names(slate, request),
+        long,
+        short,
+        values,
+        (cell["forward_long"], cell["forward_short"], at),
+        _boundary(cell, long),
+        tuple(_ring(cell, deviations) for deviations in (1.0, 2.0)),
+    )
+
+
+def _names(slate: Slate, request: SurfaceRequest) -> tuple[str, tuple[str, str], str]:
+    """The subject, the two axes and the unit, in words."""
+    position, unit = slate.book.positions[request.row], slate.units[request.row]
+    names = {market.name: market.unit for market in slate.book.markets}
+    axes = []
+    for side in ("long", "short"):
+        leg, delivery = getattr(position, f"{side}_leg"), getattr(position, f"{side}_delivery")
+        name = f"{leg} {delivery}".strip() or f"{side.capitalize()} forward, own mark"
+        axes.append(", ".join(filter(None, (name, names.get(leg, "")))))
+    quantity = quantity_of(request.quantity).unit.replace("{unit}", unit).strip()
+    return position.name or f"Position {request.row + 1}", (axes[0], axes[1]), quantity
+
+
+def _boundary(cell: dict[str, float], long: FloatArray) -> FloatArray:
+    """Where ratio_long * F_long - ratio_short * F_short = strike."""
+    return np.array([long, (cell["ratio_long"] * long - cell["strike"]) / cell["ratio_short"]])
+
+
+def _ring(cell: dict[str, float], deviations: float) -> FloatArray:
+    """The ellipse of so many standard deviations of the two log-forwards at the expiry, around where they stand now."""
+    root = np.sqrt(cell["years"])
+    first, second = (np.nan_to_num(cell[key]) * root * deviations for key in ("vol_long", "vol_short"))
+    rho = np.nan_to_num(cell["correlation"])
+    angle = np.linspace(0.0, 2.0 * np.pi, 121)
+    long_shift = np.cos(angle)
+    short_shift = rho * long_shift + np.sqrt((1.0 - rho) * (1.0 + rho)) * np.sin(angle)
+    with np.errstate(over="ignore"):
+        return np.array(
+            [
+                cell["forward_long"] * np.exp(first * long_shift),
+                cell["forward_short"] * np.exp(second * short_shift),
+            ]
+        )
 
 
 _NEEDED = (
@@ -144,6 +197,6 @@ def _nodes(
 
 
 def _blank(slate: Slate, request: SurfaceRequest, reason: str) -> Surface:
-    empty = np.empty(0)
-    nan = float("nan")
-    return Surface(slate.revision, request, empty, empty, np.empty((0, 0)), (nan, nan, nan), reason)
+    none, line, nan = np.empty(0), np.empty((2, 0)), float("nan")
+    names = _names(slate, request)
+    return Surface(slate.revision, request, *names, none, none, np.empty((0, 0)), (nan, nan, nan), line, (), reason)

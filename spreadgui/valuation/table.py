@@ -1,0 +1,123 @@
+"""A whole book valued at once, and its value table as CSV, JSON and plain text."""
+
+from __future__ import annotations
+
+import csv
+import io
+import json
+from collections.abc import Iterator
+from concurrent.futures import Executor
+from dataclasses import dataclass
+
+import numpy as np
+
+from spreadgui.book.records import Book
+from spreadgui.pricing.methods import method as method_of
+from spreadgui.valuation.columns import BY_COLUMN_KEY, VALUE_TABLE, Column, exact_text
+from spreadgui.valuation.price import chunks, price_rows
+from spreadgui.valuation.results import LiveResults, State
+from spreadgui.valuation.shown import number_text
+from spreadgui.valuation.slate import FloatArray, Slate, follow
+
+
+@dataclass(frozen=True)
+class ValuedBook:
+    """A slate with every row that can be priced priced."""
+
+    slate: Slate
+    results: LiveResults
+
+
+def value_book(book: Book, executor: Executor | None = None) -> ValuedBook:
+    """Price every position of `book`; a row that cannot be priced says why, all others are current."""
+    succession = follow(None, book, 1)
+    results = LiveResults()
+    results.follow(succession)
+    for rows in chunks(results.pending()):
+        results.accept(price_rows(succession.slate, rows, executor))
+    return ValuedBook(succession.slate, results)
+
+
+def total_value(results: LiveResults) -> float:
+    """The sum of the position values of all current rows, in the book's currency."""
+    assert results.slate is not None
+    values = results.slate.values("quantity") * results.values("value")
+    return float(values[results.state == State.CURRENT].sum())
+
+
+def csv_text(valued: ValuedBook) -> str:
+    """The value table: a header of column keys, one line a position, numbers in code units to the last digit."""
+    stream = io.StringIO()
+    writer = csv.writer(stream, lineterminator="\n")
+    writer.writerow(VALUE_TABLE)
+    columns = _read_columns(valued)
+    for row in range(len(valued.slate)):
+        writer.writerow([exact_text(column, valued.slate, valued.results, numbers, row) for column, numbers in columns])
+    return stream.getvalue()
+
+
+def json_text(valued: ValuedBook) -> str:
+    """The same table as JSON, under the book's title, day, currency and total; null where there is no number."""
+    book = valued.slate.book
+    columns = _read_columns(valued)
+    head = {
+        "title": book.title,
+        "currency": book.currency,
+        "valuation_date": book.valuation_date.isoformat(),
+        "method": book.method,
+        "book_value": total_value(valued.results),
+    }
+    positions = [
+        {column.key: _json_cell(valued, column, numbers, row) for column, numbers in columns}
+        for row in range(len(valued.slate))
+    ]
+    return json.dumps({**head, "positions": positions}, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
+
+
+def summary_text(valued: ValuedBook) -> str:
+    """A table for a terminal: name, value, unit values, state, and the book's total."""
+    book = valued.slate.book
+    lines = [f"{book.title}, {book.valuation_date}, value by {method_of(book.method).name}", ""]
+    lines += _aligned(list(_summary_rows(valued)))
+    states = [State(int(code)).word for code in valued.results.state]
+    counts = ", ".join(f"{states.count(word)} {word}" for word in dict.fromkeys(states))
+    lines += ["", f"Book value {number_text(total_value(valued.results), 0)} {book.currency}".rstrip() + f" ({counts})"]
+    return "\n".join(lines)
+
+
+def _summary_rows(valued: ValuedBook) -> Iterator[tuple[str, ...]]:
+    keys = ("name", "position_value", "yardstick", "bjerksund_stensland", "kirk", "state", "reason")
+    columns = _read_columns(valued, keys)
+    yield tuple(column.heading for column, _ in columns)
+    for row in range(len(valued.slate)):
+        yield tuple(
+            column.shown(float(numbers[row])) if numbers is not None
+            else exact_text(column, valued.slate, valued.results, None, row)
+            for column, numbers in columns
+        )  # fmt: skip
+
+
+def _aligned(rows: list[tuple[str, ...]]) -> list[str]:
+    widths = [max(len(row[place]) for row in rows) for place in range(len(rows[0]))]
+    numeric = range(1, 5)
+    return [
+        "  ".join(
+            cell.rjust(width) if place in numeric else cell.ljust(width)
+            for place, (cell, width) in enumerate(zip(row, widths, strict=True))
+        ).rstrip()
+        for row in rows
+    ]
+
+
+def _read_columns(valued: ValuedBook, keys: tuple[str, ...] = VALUE_TABLE) -> list[tuple[Column, FloatArray | None]]:
+    columns = [BY_COLUMN_KEY[key] for key in keys]
+    return [
+        (column, None if column.numbers is None else column.numbers(valued.slate, valued.results)) for column in columns
+    ]
+
+
+def _json_cell(valued: ValuedBook, column: Column, numbers: FloatArray | None, row: int) -> str | float | None:
+    if numbers is None:
+        return exact_text(column, valued.slate, valued.results, None, row)
+    value = float(numbers[row])
+    return value if np.isfinite(value) else None
