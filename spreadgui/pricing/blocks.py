@@ -1,0 +1,118 @@
+"""Cutting a call into cache-sized blocks and mapping them, inline or over the caller's executor.
+ A formula of forty array passes over a million rows is bound by memory: every pass fetches from and stores to main
+memory what the pass before it had just made. Cut into blocks of some thousand rows the intermediate results stay in
+the cache, and the buffers they live in are reused from block to block instead of being handed back to the operating
+system and faulted in again. The block kernel never sees where its rows came from; its results depend on each row
+alone, so that neither the cut nor the executor can change a digit.
+ With an executor the blocks are gathered into tasks. A pool of threads of this process writes into the results in
+place; a task for any other executor returns its results, so that one of processes or of another machine serves as
+well.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Sequence
+from concurrent.futures import Executor, Future, ThreadPoolExecutor
+from math import prod
+
+import numpy as np
+
+from spreadgui.pricing.inputs import Array
+
+# Called with the columns of one block (each of shape (rows,) or (1,)), the results to fill (results, rows) and scratch
+# space (scratch, rows).
+Kernel = Callable[[Sequence[Array], Array, Array], None]
+Piece = tuple[int | slice, ...]
+
+# Measured on a machine with half a megabyte of second-level cache: a value with its seven buffers runs best at 16,384
+# rows, sensitivities with nineteen at 8,192; half or twice as many cost a tenth more.
+BLOCK_ROWS = 8192
+VALUE_BLOCK_ROWS = 16384
+TASK_ROWS = 131072
+
+
+def pieces(shape: tuple[int, ...], rows: int) -> Iterator[Piece]:
+    """Index tuples that cut an array of this shape into contiguous pieces of at most `rows` elements, in order.
+
+    >>> list(pieces((5,), 2))
+    [(slice(0, 2, None),), (slice(2, 4, None),), (slice(4, 5, None),)]
+    >>> len(list(pieces((100, 3, 4), 24)))
+    50
+    """
+    if not shape:
+        yield ()
+        return
+    axis, inner = 0, prod(shape[1:])
+    while inner > rows and axis < len(shape) - 1:
+        axis += 1
+        inner //= shape[axis]
+    step = max(1, rows // max(inner, 1))
+    for outer in np.ndindex(*shape[:axis]):
+        for start in range(0, shape[axis], step):
+            yield (*outer, slice(start, min(start + step, shape[axis])))
+
+
+def _take(column: Array, shape: tuple[int, ...], piece: Piece) -> Array:
+    """The rows of one piece as a flat array; a scalar column stays one number and is broadcast inside the kernel."""
+    if column.size == 1:
+        return column.reshape(1)
+    return np.broadcast_to(column, shape)[piece].reshape(-1)
+
+
+def _fill(kernel: Kernel, columns: Sequence[Array], out: Array, scratch: int, block_rows: int) -> None:
+    """Run the kernel over flat columns block by block, every block in the same scratch space."""
+    total = out.shape[1]
+    work = np.empty((scratch, min(block_rows, total)))
+    with np.errstate(all="ignore"):
+        for start in range(0, total, block_rows):
+            stop = min(start + block_rows, total)
+            block = [column if column.size == 1 else column[start:stop] for column in columns]
+            kernel(block, out[:, start:stop], work[:, : stop - start])
+
+
+def _filled(kernel: Kernel, columns: Sequence[Array], size: int, results: int, scratch: int, block_rows: int) -> Array:
+    """A task for executors that share no memory with the caller."""
+    out = np.empty((results, size))
+    _fill(kernel, columns, out, scratch, block_rows)
+    return out
+
+
+def run(
+    kernel: Kernel,
+    columns: Sequence[Array],
+    shape: tuple[int, ...],
+    results: int,
+    *,
+    scratch: int = 0,
+    executor: Executor | None = None,
+    block_rows: int = BLOCK_ROWS,
+    task_rows: int = TASK_ROWS,
+) -> Array:
+    """Results of shape (results, *shape) of a row-wise kernel over columns that broadcast to `shape`.
+
+    With an executor tasks hold about `task_rows` rows; the kernel must be picklable where the executor needs that.
+    """
+    out = np.empty((results, *shape))
+    if not out.size:
+        return out
+    flat, start = out.reshape(results, -1), 0
+    work = np.empty((scratch, min(block_rows, flat.shape[1])))
+    pending: list[tuple[Array, Future[Array]] | Future[None]] = []
+    for piece in pieces(shape, block_rows if executor is None else task_rows):
+        taken = [_take(column, shape, piece) for column in columns]
+        stop = start + out[(0, *piece)].size
+        part, start = flat[:, start:stop], stop
+        if executor is None:
+            with np.errstate(all="ignore"):
+                kernel(taken, part, work[:, : part.shape[1]])
+        elif isinstance(executor, ThreadPoolExecutor):
+            pending.append(executor.submit(_fill, kernel, taken, part, scratch, block_rows))
+        else:
+            size = part.shape[1]
+            pending.append((part, executor.submit(_filled, kernel, taken, size, results, scratch, block_rows)))
+    for task in pending:
+        if isinstance(task, tuple):
+            task[0][...] = task[1].result()
+        else:
+            task.result()
+    return out

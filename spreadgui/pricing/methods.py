@@ -1,0 +1,101 @@
+"""The methods table: every published method of this room, declared once.
+
+Columns, panels, the command line and the tests loop over `METHODS`; a new method is one entry.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from spreadgui.pricing import bjerksund_stensland, kirk, margrabe, modified_kirk, yardstick
+from spreadgui.pricing.inputs import Array
+from spreadgui.pricing.results import Sensitivities
+
+Accepts = Callable[[ArrayLike], NDArray[np.bool_]]
+
+
+def any_strike(strike: ArrayLike) -> NDArray[np.bool_]:
+    """True everywhere, in the shape of the strikes."""
+    return np.ones(np.shape(strike), dtype=np.bool_)
+
+
+def strike_of_zero(strike: ArrayLike) -> NDArray[np.bool_]:
+    """True where the strike is zero, in the shape of the strikes."""
+    return np.asarray(np.asarray(strike) == 0.0)
+
+
+@dataclass(frozen=True)
+class Method:
+    """One published method. `value` and `sensitivities` take the arguments all spread methods share."""
+
+    key: str
+    name: str
+    source: str
+    applies: str
+    value: Callable[..., Array]
+    sensitivities: Callable[..., Sensitivities]
+    accepts: Accepts = any_strike
+    reference: bool = False
+
+
+METHODS: tuple[Method, ...] = (
+    Method(
+        key="margrabe",
+        name="Margrabe",
+        source="W. Margrabe, Journal of Finance 33 (1978) 177-186",
+        applies="Exact for a strike of zero, and only there.",
+        value=margrabe.value,
+        sensitivities=margrabe.sensitivities,
+        accepts=strike_of_zero,
+    ),
+    Method(
+        key="kirk",
+        name="Kirk",
+        source="E. Kirk, in Managing Energy Price Risk (Risk Publications, 1995)",
+        applies="Approximate; best for strikes that are small beside the short forward.",
+        value=kirk.value,
+        sensitivities=kirk.sensitivities,
+    ),
+    Method(
+        key="modified_kirk",
+        name="modified Kirk",
+        source="E. Alòs and J. A. León, Quantitative Finance 16 (2016) 31-42",
+        applies="Kirk with the volatility corrected for its slope in moneyness; best near the money.",
+        value=modified_kirk.value,
+        sensitivities=modified_kirk.sensitivities,
+    ),
+    Method(
+        key="bjerksund_stensland",
+        name="Bjerksund-Stensland",
+        source="P. Bjerksund and G. Stensland, Quantitative Finance 14 (2014) 1785-1794",
+        applies="Approximate from below; the closest of the closed forms over most of the range.",
+        value=bjerksund_stensland.value,
+        sensitivities=bjerksund_stensland.sensitivities,
+    ),
+    Method(
+        key="yardstick",
+        name="Yardstick",
+        source="Numerical integration along the exercise boundary; derived in spreadgui.pricing.boundary",
+        applies="The reference value under two lognormal forwards, for every strike.",
+        value=yardstick.value,
+        sensitivities=yardstick.sensitivities,
+        reference=True,
+    ),
+)
+
+_BY_KEY = {method.key: method for method in METHODS}
+
+
+def method(key: str) -> Method:
+    """The method of that key; `ValueError` listing the keys there are.
+
+    >>> method("kirk").name
+    'Kirk'
+    """
+    if key not in _BY_KEY:
+        raise ValueError(f"method: expected one of {', '.join(_BY_KEY)}, found {key!r}")
+    return _BY_KEY[key]
