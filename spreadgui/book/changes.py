@@ -61,6 +61,8 @@ class RowsInserted:
     def apply(self, book: Book) -> Book:
         positions = list(book.positions)
         for row, position in zip(self.rows, self.positions, strict=True):
+            if not 0 <= row <= len(positions):
+                raise IndexError(f"no position can come to stand at row {row} of {len(positions)}")
             positions.insert(row, position)
         return msgspec.structs.replace(book, positions=tuple(positions))
 
@@ -78,6 +80,8 @@ class RowsRemoved:
 
     def apply(self, book: Book) -> Book:
         gone = set(self.rows)
+        if not gone <= set(range(len(book.positions))):
+            raise IndexError(f"not all of the rows {self.rows} are among the book's {len(book.positions)}")
         kept = (position for row, position in enumerate(book.positions) if row not in gone)
         return msgspec.structs.replace(book, positions=tuple(kept))
 

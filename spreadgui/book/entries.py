@@ -20,9 +20,11 @@ from dataclasses import dataclass
 
 Value = str | float | datetime.date | None
 
-_GROUPED = re.compile(r"[+-]?\d{1,3}(?:[ \u00a0\u2009\u202f]\d{3})+(?:\.\d*)?")
-_PLAIN = re.compile(r"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d{1,4})?")
-_DELIVERY = re.compile(r"(\d{4})-(0[1-9]|1[0-2])")
+_GROUPED = re.compile(r"[+-]?\d{1,3}(?:[ \u00a0\u2009\u202f]\d{3})+(?:\.\d*)?", re.ASCII)
+# One way only to match each text: `\d+\.?\d*` tries all pairs of cuts in a long run of digits, minutes for one cell.
+_PLAIN = re.compile(r"[+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d{1,4})?", re.ASCII)
+_DAY = re.compile(r"\d{4}-\d\d-\d\d", re.ASCII)
+_DELIVERY = re.compile(r"(\d{4})-(0[1-9]|1[0-2])", re.ASCII)
 _LONGEST = 60
 
 
@@ -30,10 +32,15 @@ class EntryError(ValueError):
     """A text that is not what its cell needs; the message is a whole sentence for the user."""
 
 
+def shown(text: object) -> str:
+    """`text` as a message of one line can hold it: control characters made visible, cut where it is long."""
+    visible = "".join(character if character.isprintable() else "\N{REPLACEMENT CHARACTER}" for character in str(text))
+    return visible if len(visible) <= _LONGEST else visible[:_LONGEST] + "…"
+
+
 def quoted(text: object) -> str:
-    """`text` in quotes for a message, control characters made visible, cut where it is long."""
-    shown = "".join(character if character.isprintable() else "\N{REPLACEMENT CHARACTER}" for character in str(text))
-    return f'"{shown if len(shown) <= _LONGEST else shown[:_LONGEST] + "…"}"'
+    """`text` as `shown`, in quotes."""
+    return f'"{shown(text)}"'
 
 
 @dataclass(frozen=True)
@@ -48,25 +55,39 @@ class Entry:
 
 def number(text: str) -> float:
     """A finite decimal number with a point; digits may be grouped in threes by spaces."""
-    bare = text.strip().replace("\N{MINUS SIGN}", "-")
-    if _GROUPED.fullmatch(bare):
-        bare = re.sub(r"[ \u00a0\u2009\u202f]", "", bare)
-    if not _PLAIN.fullmatch(bare):
-        raise EntryError(f"expected a number, got {quoted(text)}")
-    value = float(bare)
+    value = float(plain_digits(text))
     if not math.isfinite(value):
         raise EntryError(f"expected a number within reach of the machine, got {quoted(text)}")
     return value
 
 
+def plain_digits(text: str) -> str:
+    """The number written in `text` without its grouping and with a plain minus."""
+    bare = text.strip().replace("\N{MINUS SIGN}", "-")
+    if _GROUPED.fullmatch(bare):
+        bare = re.sub(r"[ \u00a0\u2009\u202f]", "", bare)
+    if not _PLAIN.fullmatch(bare):
+        raise EntryError(f"expected a number, got {quoted(text)}")
+    return bare
+
+
 def date(text: str) -> datetime.date:
     """A calendar day written 2027-01-15."""
+    bare = text.strip()
     try:
-        if len(text.strip()) != 10:
+        if not _DAY.fullmatch(bare):  # fromisoformat alone takes weeks too: 2027-W01-1
             raise ValueError
-        return datetime.date.fromisoformat(text.strip())
+        return datetime.date.fromisoformat(bare)
     except ValueError:
         raise EntryError(f"expected a day written as 2027-01-15, got {quoted(text)}") from None
+
+
+def words(text: str) -> str:
+    """Any text, without the blanks around it; half a character pair is refused, for no file could hold it."""
+    bare = text.strip()
+    if any("\ud800" <= character <= "\udfff" for character in bare):
+        raise EntryError(f"expected whole characters, got {quoted(text)}")
+    return bare
 
 
 def delivery(text: str) -> str:
@@ -126,7 +147,7 @@ def choice(*choices: str) -> Entry:
     return Entry(_one_of(choices), _words_text, choices)
 
 
-WORDS = Entry(str.strip, _words_text)
+WORDS = Entry(words, _words_text)
 NUMBER = Entry(number, _number_text, numeric=True)
 OPTIONAL_NUMBER = Entry(_optional(number, None), _number_text, numeric=True)
 ZERO_NUMBER = Entry(_optional(number, 0.0), _number_text, numeric=True)

@@ -14,14 +14,18 @@ from spreadgui.book.entries import Entry
 
 @dataclass(frozen=True)
 class Field:
-    """One field of a position. `needed` fields must have a column in a CSV file and a value in each of its lines."""
+    """One field of a position.
+
+    `needed` fields must have a column in a CSV file and a value in each of its lines. A decimal that screens show in
+    per cent says in `in_percent` what is expected there.
+    """
 
     key: str
     entry: Entry
     heading: str
     help: str
     needed: bool = False
-    percent: bool = False
+    in_percent: str = ""
 
 
 FIELDS: tuple[Field, ...] = (
@@ -74,21 +78,21 @@ FIELDS: tuple[Field, ...] = (
         entries.VOLATILITY,
         "Long volatility",
         "The long leg's volatility; typed here it wins over Marks.",
-        percent=True,
+        in_percent="a volatility of 0 % or more",
     ),
     Field(
         "own_vol_short",
         entries.VOLATILITY,
         "Short volatility",
         "The short leg's volatility; typed here it wins over Marks.",
-        percent=True,
+        in_percent="a volatility of 0 % or more",
     ),
     Field(
         "own_correlation",
         entries.CORRELATION,
         "Correlation",
         "The correlation of the two forwards; typed here it wins over the book's.",
-        percent=True,
+        in_percent="a correlation from −100 to 100 %",
     ),
     Field("note", entries.WORDS, "Note", "Anything the desk wants to remember of this position."),
 )

@@ -8,6 +8,8 @@ from __future__ import annotations
 
 import codecs
 import csv
+import io
+from collections import Counter
 from collections.abc import Iterator, Sequence
 from pathlib import Path
 
@@ -50,7 +52,8 @@ def _text(data: bytes) -> str:
 
 def _numbered_rows(text: str) -> Iterator[tuple[int, list[str]]]:
     """Each line that holds anything, with the number it has in the file."""
-    reader = csv.reader(text.splitlines(keepends=True), strict=True)
+    # Not splitlines: that also breaks at the line separators that a note may hold.
+    reader = csv.reader(io.StringIO(text, newline=""), strict=True)
     line = 1
     try:
         for row in reader:
@@ -58,7 +61,7 @@ def _numbered_rows(text: str) -> Iterator[tuple[int, list[str]]]:
                 yield line, row
             line = reader.line_num + 1
     except csv.Error as error:
-        raise BookError([Fault(f"line {line}", f"the quoting of this line cannot be read: {error}")]) from None
+        raise BookError([Fault(f"line {line}", f"this line cannot be read as CSV: {error}")]) from None
 
 
 def _fields_of(header: Sequence[str], line: int) -> list[Field]:
@@ -69,7 +72,11 @@ def _fields_of(header: Sequence[str], line: int) -> list[Field]:
         for key, heading in zip(keys, header, strict=True)
         if key not in BY_KEY
     ]
-    faults += [Fault(where, f"the heading {key} stands twice") for key in dict.fromkeys(keys) if keys.count(key) > 1]
+    faults += [
+        Fault(where, f"the heading {key} stands {count} times")
+        for key, count in Counter(keys).items()
+        if count > 1 and key in BY_KEY
+    ]
     faults += [
         Fault(where, f"the heading {field.key} is missing")
         for field in FIELDS

@@ -4,19 +4,31 @@ from __future__ import annotations
 
 import codecs
 import json
+import re
 from pathlib import Path
-from typing import Any
+from typing import Any, Literal
 
 import msgspec
 
 from spreadgui.book import shape
-from spreadgui.book.entries import quoted
+from spreadgui.book.entries import shown
 from spreadgui.book.faults import BookError, Fault
 from spreadgui.book.records import FORMAT, VERSION, Book
 
 # A book of a million positions is a tenth of this; anything longer is some other file chosen by mistake.
 LARGEST_FILE = 256 * 2**20
 MOST_FAULTS = 200
+
+_BREAKS_OFF = "the file breaks off before the book ends"
+# What may be left of a value where a file was cut in the middle of it.
+_CUT_VALUE = re.compile(r"|t(ru?)?|f(a(ls?)?)?|n(ul?)?|-|\.|[eE][+-]?")
+
+
+class _Head(msgspec.Struct):
+    """What a file must say of itself before the rest is looked at; in a record it could be left to its default."""
+
+    format: Literal["spreadgui book"]
+    version: int
 
 
 def read_book(path: Path) -> Book:
@@ -32,13 +44,15 @@ def read_bytes(path: Path) -> bytes:
     try:
         if path.is_dir():
             raise _refusal("this is a folder, not a file")
-        if path.stat().st_size > LARGEST_FILE:
-            raise _refusal(f"the file is larger than {LARGEST_FILE // 2**20} MiB, which no book is")
-        return path.read_bytes()
+        with path.open("rb") as stream:
+            data = stream.read(LARGEST_FILE + 1)  # not by its stated size: a device states none and never ends
     except FileNotFoundError:
         raise _refusal("there is no such file") from None
     except (OSError, ValueError) as error:
         raise _refusal(f"the file cannot be read: {getattr(error, 'strerror', None) or error}") from None
+    if len(data) > LARGEST_FILE:
+        raise _refusal(f"the file is larger than {LARGEST_FILE // 2**20} MiB, which no book is")
+    return data
 
 
 def parse_book(data: bytes) -> Book:
@@ -47,11 +61,14 @@ def parse_book(data: bytes) -> Book:
     if not data.strip():
         raise _refusal("the file is empty")
     try:
+        msgspec.json.decode(data, type=_Head)
         book = msgspec.json.decode(data, type=Book)
     except (msgspec.DecodeError, RecursionError, UnicodeDecodeError):
         raise _explain(data) from None
     if book.version > VERSION:
         raise _too_new(book.version)
+    if book.version < 1:
+        raise BookError(_version_faults(book.version))
     return book
 
 
@@ -61,8 +78,10 @@ def _explain(data: bytes) -> BookError:
     The standard library's reader is used here because it takes numbers out of range, so that the walk can name them.
     """
     try:
-        return _explain_entries(json.loads(data.decode()))
+        return _explain_entries(json.loads(data.decode(), object_pairs_hook=shape.WrittenObject))
     except UnicodeDecodeError as error:
+        if error.reason == "unexpected end of data":
+            return BookError([Fault(_place(data, error.start), _BREAKS_OFF)])
         return BookError([Fault(_place(data, error.start), "this is not text in UTF-8, so not a book")])
     except RecursionError:
         return _refusal("the file is nested deeper than any book")
@@ -78,7 +97,8 @@ def _explain_entries(raw: Any) -> BookError:
     version = raw.get("version")
     if isinstance(version, int) and not isinstance(version, bool) and version > VERSION:
         return _too_new(version)
-    found = list(shape.faults(raw, Book))
+    missing = [] if "version" in raw else [Fault("version", "is missing")]
+    found = [*missing, *_version_faults(version), *shape.faults(raw, Book)]
     if len(found) > MOST_FAULTS:
         found = [*found[:MOST_FAULTS], Fault("", f"and {len(found) - MOST_FAULTS} more faults of this kind")]
     return BookError(found or [Fault("", "the file cannot be taken as a book")])
@@ -88,8 +108,10 @@ def _syntax_fault(error: json.JSONDecodeError) -> Fault:
     where = f"line {error.lineno}, column {error.colno}"
     if "\0" in error.doc:
         return Fault("", "this is not text, so not a book")
-    if error.pos >= len(error.doc.rstrip()) or error.msg.startswith("Unterminated string"):
-        return Fault(where, "the file breaks off before the book ends")
+    tail = error.doc.rstrip()[error.pos :]
+    in_escape = error.msg.startswith("Invalid \\u") and len(tail) < len("\\uXXXX")
+    if _CUT_VALUE.fullmatch(tail) or in_escape or error.msg.startswith("Unterminated string"):
+        return Fault(where, _BREAKS_OFF)
     return Fault(where, f"the text is not JSON: {error.msg[0].lower()}{error.msg[1:]}")
 
 
@@ -100,10 +122,15 @@ def _place(data: bytes, offset: int) -> str:
     return f"line {line}, column {offset - line_start + 1}"
 
 
+def _version_faults(version: Any) -> list[Fault]:
+    if isinstance(version, int) and not isinstance(version, bool) and version < 1:
+        return [Fault("version", f"expected a whole number from 1, got {shown(version)}")]
+    return []
+
+
 def _too_new(version: int) -> BookError:
     return _refusal(
-        f"this book is of version {quoted(version)[1:-1]}, written by a newer program; "
-        f"this one reads up to version {VERSION}"
+        f"this book is of version {shown(version)}, written by a newer program; this one reads up to version {VERSION}"
     )
 
 

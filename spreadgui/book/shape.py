@@ -7,16 +7,18 @@ all, so that a person mends a file in one round.
 from __future__ import annotations
 
 import datetime
+import functools
 import json
 import math
 import types
 import typing
-from collections.abc import Iterator
+from collections import Counter
+from collections.abc import Iterator, Sequence
 from typing import Any
 
 import msgspec
 
-from spreadgui.book.entries import quoted
+from spreadgui.book.entries import quoted, shown
 from spreadgui.book.faults import Fault
 
 _EXPECTED = {
@@ -27,21 +29,37 @@ _EXPECTED = {
 }
 
 
+class WrittenObject(dict[str, Any]):
+    """An object as it stands in a file; `twice` are the keys of it that stand there more than once."""
+
+    def __init__(self, pairs: Sequence[tuple[str, Any]]) -> None:
+        super().__init__(pairs)
+        counts = Counter(key for key, _ in pairs) if len(pairs) > len(self) else Counter[str]()
+        self.twice = [key for key, count in counts.items() if count > 1]
+
+
 def faults(value: Any, record: type[msgspec.Struct], where: str = "") -> Iterator[Fault]:
     """Every difference between the parsed `value` and the type `record`, in the order of the record's fields."""
     if not isinstance(value, dict):
         yield Fault(where, f"expected an object in braces, got {_shown(value)}")
         return
-    hints = typing.get_type_hints(record)
-    fields = {field.encode_name: field for field in msgspec.structs.fields(record)}
+    hints, fields = _entries_of(record)
     for name, field in fields.items():
         place = f"{where}.{name}" if where else name
         if name in value:
             yield from _value_faults(value[name], hints[field.name], place)
         elif field.required:
             yield Fault(place, "is missing")
-    for name in value.keys() - fields.keys():
+    for name in value.twice if isinstance(value, WrittenObject) else ():
+        yield Fault(f"{where}.{_key(name)}" if where else _key(name), "stands more than once")
+    for name in [name for name in value if name not in fields]:
         yield Fault(f"{where}.{_key(name)}" if where else _key(name), "is not an entry that this file has")
+
+
+@functools.cache
+def _entries_of(record: type[msgspec.Struct]) -> tuple[dict[str, Any], dict[str, msgspec.structs.FieldInfo]]:
+    """The types and the fields of a record; looking them up anew for each of 10,000 positions took seconds."""
+    return typing.get_type_hints(record), {field.encode_name: field for field in msgspec.structs.fields(record)}
 
 
 def _value_faults(value: Any, expected: Any, where: str) -> Iterator[Fault]:
@@ -62,7 +80,9 @@ def _fits(value: Any, expected: Any) -> bool:
         return False
     try:
         msgspec.convert(value, expected)
-    except (msgspec.ValidationError, OverflowError):
+        if isinstance(value, str):
+            value.encode()  # half a character pair, which the JSON of others can hold
+    except (msgspec.ValidationError, OverflowError, UnicodeEncodeError):
         return False
     return True
 
@@ -84,8 +104,8 @@ def _shown(value: Any) -> str:
         return "an object in braces"
     if isinstance(value, list):
         return "a list in brackets"
-    return quoted(json.dumps(value))[1:-1]
+    return shown(json.dumps(value))
 
 
 def _key(name: str) -> str:
-    return quoted(name)[1:-1]
+    return shown(name) if name.strip() else quoted(name)

@@ -7,6 +7,7 @@ in the lines where the book does.
 from __future__ import annotations
 
 import contextlib
+import errno
 import functools
 import os
 import tempfile
@@ -31,15 +32,38 @@ def write_book(book: Book, path: Path) -> None:
     """Put `book` in the file at `path`, whole or not at all.
 
     The content goes to a new file in the same folder, to the disk, and only then under the name. Raises OSError when
-    the folder or the disk refuses; the file that was there is then untouched.
+    the folder or the disk refuses, and ValueError when the book holds what its file cannot give back (NaN, infinity,
+    half a character pair); the file that was there is then untouched.
     """
-    write_whole(path, book_bytes(book))
+    data = book_bytes(book)
+    if not _gives_back(data, book):
+        raise ValueError("the book holds a value that its file could not give back")
+    write_whole(path, data)
+
+
+def _gives_back(data: bytes, book: Book) -> bool:
+    try:
+        return msgspec.json.decode(data, type=Book) == book
+    except msgspec.DecodeError:
+        return False
 
 
 def write_whole(path: Path, data: bytes) -> None:
-    """Put `data` in the file at `path`, whole or not at all; a link is followed, the file's permissions are kept."""
-    target = path.resolve()
-    handle, name = tempfile.mkstemp(dir=target.parent, prefix=f".{target.name}.", suffix=".new")
+    """Put `data` in the file at `path`, whole or not at all; a link is followed, the file's permissions are kept.
+
+    Raises OSError as a plain write would: also for a file that is set to be only read. A pipe or a device is written
+    to as it stands, for putting a file in its place would take it from everybody.
+    """
+    if path.exists() and not path.is_file() and not path.is_dir():
+        path.write_bytes(data)
+        return
+    target = Path(os.path.realpath(path))
+    if target.is_symlink():
+        raise OSError(errno.ELOOP, os.strerror(errno.ELOOP), str(path))
+    if target.exists() and not os.access(target, os.W_OK, effective_ids=os.access in os.supports_effective_ids):
+        raise PermissionError(errno.EACCES, os.strerror(errno.EACCES), str(path))
+    # The start of the name tells whose it is; the whole of it could be too long with the rest.
+    handle, name = tempfile.mkstemp(dir=target.parent, prefix=f".{target.name[:16]}.", suffix=".new")
     try:
         with os.fdopen(handle, "wb") as stream:
             stream.write(data)

@@ -6,11 +6,14 @@ import math
 from collections import Counter
 from collections.abc import Iterator
 
-from spreadgui.book.entries import is_delivery, quoted
+from spreadgui.book.entries import is_delivery, quoted, shown
 from spreadgui.book.faults import Fault
 from spreadgui.book.records import Book, Market
 from spreadgui.market.contracts import resolve
 from spreadgui.market.quotes import Quotes
+
+# Ten times the square root of time in a year is beyond any market; such a figure is one in per cent.
+_HIGHEST_VOLATILITY = 10.0
 
 
 def faults_of(book: Book) -> list[Fault]:
@@ -26,6 +29,7 @@ def _market_faults(book: Book) -> Iterator[Fault]:
             yield Fault(f"{where}.name", "a market needs a name")
         elif names[market.name] > 1:
             yield Fault(f"{where}.name", f"the market {quoted(market.name)} is defined {names[market.name]} times")
+        yield from _unit_faults(market, book.currency, where)
         if not 0 <= market.tie_strength < math.inf:
             yield Fault(f"{where}.tie_strength", f"is {market.tie_strength:g}; it cannot be below zero")
         yield from _mark_faults(market, where)
@@ -40,9 +44,30 @@ def _mark_faults(market: Market, where: str) -> Iterator[Fault]:
                 f"{place}.delivery", f"expected a delivery month written as 2027-01, got {quoted(mark.delivery)}"
             )
         elif deliveries[mark.delivery] > 1:
-            yield Fault(f"{place}.delivery", f"{market.name} has {deliveries[mark.delivery]} marks for {mark.delivery}")
-        if mark.volatility < 0:
-            yield Fault(f"{place}.volatility", f"is {mark.volatility:g}; it cannot be below zero")
+            count = deliveries[mark.delivery]
+            yield Fault(f"{place}.delivery", f"{shown(market.name)} has {count} marks for {mark.delivery}")
+        yield from _volatility_faults(mark.volatility, f"{place}.volatility")
+
+
+def _unit_faults(market: Market, currency: str, where: str) -> Iterator[Fault]:
+    """Values of all markets are added up, so all must be quoted in the book's money."""
+    money, slash, counted_by = market.unit.partition("/")
+    if not (money.strip() and slash and counted_by.strip()):
+        yield Fault(f"{where}.unit", f"expected money for a quantity, as CRN/MWh, got {quoted(market.unit)}")
+    elif money.strip() != currency:
+        yield Fault(
+            f"{where}.unit",
+            f"is in {shown(money.strip())}, while the book counts in {shown(currency) or 'no currency'}",
+        )
+
+
+def _volatility_faults(volatility: float | None, where: str) -> Iterator[Fault]:
+    if volatility is None:
+        return
+    if volatility < 0:
+        yield Fault(where, f"is {volatility:g}; it cannot be below zero")
+    elif volatility > _HIGHEST_VOLATILITY:
+        yield Fault(where, f"is {volatility:g}, which is {100 * volatility:g} %; a volatility of 45 % is written 0.45")
 
 
 def _correlation_faults(book: Book) -> Iterator[Fault]:
@@ -58,7 +83,7 @@ def _correlation_faults(book: Book) -> Iterator[Fault]:
                 where, f"ties {quoted(pair.first)} to itself; its deliveries are tied by the market's tie strength"
             )
         elif pairs[frozenset((pair.first, pair.second))] > 1:
-            yield Fault(where, f"{pair.first} and {pair.second} have more than one correlation")
+            yield Fault(where, f"{shown(pair.first)} and {shown(pair.second)} have more than one correlation")
         if abs(pair.correlation) > 1:
             yield Fault(f"{where}.correlation", f"is {pair.correlation:g}, beyond 1 or −1")
 
@@ -68,3 +93,7 @@ def _position_faults(book: Book) -> Iterator[Fault]:
     for index, position in enumerate(book.positions):
         for trouble in resolve(position, quotes, book.valuation_date, book.zero_rate).troubles:
             yield Fault(f"positions[{index}].{trouble.field}", trouble.sentence)
+        for field in ("own_vol_long", "own_vol_short"):
+            volatility = getattr(position, field)
+            if volatility is not None and volatility >= 0:  # below zero the row is refused, and told of above
+                yield from _volatility_faults(volatility, f"positions[{index}].{field}")

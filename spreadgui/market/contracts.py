@@ -68,15 +68,26 @@ def resolve(position: Position, quotes: Quotes, valuation_date: datetime.date, z
     _resolve_correlation(resolved, position, quotes)
     _resolve_time(resolved, position, valuation_date, zero_rate)
     _check_numbers(resolved, position)
+    resolved.troubles.sort(key=lambda trouble: Position.__struct_fields__.index(trouble.field))
     return resolved
 
 
 def _shape(position: Position) -> Shape:
-    has_long = bool(position.long_leg) or position.own_forward_long is not None
-    has_short = bool(position.short_leg) or position.own_forward_short is not None
+    has_long, has_short = _speaks_of(position, "long"), _speaks_of(position, "short")
     if has_long == has_short:
         return Shape.SPREAD
     return Shape.LONG_LEG_ONLY if has_long else Shape.SHORT_LEG_ONLY
+
+
+def _speaks_of(position: Position, side: str) -> bool:
+    """Whether anything in the row says that there is such a leg; then one that is not named is missing, not absent."""
+    return bool(
+        getattr(position, f"{side}_leg")
+        or getattr(position, f"{side}_delivery")
+        or getattr(position, f"own_forward_{side}") is not None
+        or getattr(position, f"own_vol_{side}") is not None
+        or getattr(position, f"{side}_ratio") != 1.0
+    )
 
 
 def _resolve_leg(resolved: ResolvedPosition, position: Position, quotes: Quotes, side: str) -> None:
@@ -91,7 +102,7 @@ def _resolve_leg(resolved: ResolvedPosition, position: Position, quotes: Quotes,
         try:
             forward, vol = _marked(quotes, leg, delivery, side, forward, vol)
         except UnknownMarkError as error:
-            _trouble_of(resolved, error, _leg_field(error, side, leg, delivery, forward))
+            _trouble_of(resolved, error, _leg_field(quotes, side, leg, forward))
     setattr(resolved, f"forward_{side}", _NAN if forward is None else forward)
     setattr(resolved, f"vol_{side}", _NAN if vol is None else vol)
 
@@ -107,19 +118,24 @@ def _marked(
     return mark.forward if forward is None else forward, mark.volatility if vol is None else vol
 
 
-def _leg_field(error: UnknownMarkError, side: str, leg: str, delivery: str, forward: float | None) -> str:
+def _leg_field(quotes: Quotes, side: str, leg: str, forward: float | None) -> str:
     if not leg:
         return f"{side}_leg" if forward is None else f"own_vol_{side}"
-    return f"{side}_delivery" if error.missing or "delivery" in str(error) else f"{side}_leg"
+    return f"{side}_delivery" if _has_market(quotes, leg) else f"{side}_leg"
+
+
+def _has_market(quotes: Quotes, leg: str) -> bool:
+    try:
+        quotes.market(leg)
+    except UnknownMarkError:
+        return False
+    return True
 
 
 def _take_unit(resolved: ResolvedPosition, quotes: Quotes, leg: str) -> None:
     """The payoff is counted in the unit of the long leg, of the only leg in an outright."""
-    if not resolved.unit:
-        try:
-            resolved.unit = quotes.market(leg).unit
-        except UnknownMarkError:
-            return
+    if not resolved.unit and _has_market(quotes, leg):
+        resolved.unit = quotes.market(leg).unit
 
 
 def _resolve_correlation(resolved: ResolvedPosition, position: Position, quotes: Quotes) -> None:
@@ -134,8 +150,19 @@ def _resolve_correlation(resolved: ResolvedPosition, position: Position, quotes:
             )
         except UnknownMarkError as error:
             _correlation_trouble(resolved, position, error)
-    elif position.kind != "forward" and not resolved.troubles:
+    elif position.kind != "forward" and not _waits_for_a_leg(resolved):
         _incomplete(resolved, "own_correlation", "the correlation is missing")
+
+
+def _waits_for_a_leg(resolved: ResolvedPosition) -> bool:
+    """Whether a leg is still to be named, which may bring the book's correlation with it."""
+    return any(
+        trouble.readiness is Readiness.INCOMPLETE and trouble.field.endswith("_leg") for trouble in resolved.troubles
+    )
+
+
+def _has_leg_trouble(resolved: ResolvedPosition) -> bool:
+    return any(trouble.field.endswith(("_leg", "_delivery")) for trouble in resolved.troubles)
 
 
 def _correlation_trouble(resolved: ResolvedPosition, position: Position, error: UnknownMarkError) -> None:
@@ -143,7 +170,7 @@ def _correlation_trouble(resolved: ResolvedPosition, position: Position, error: 
         return  # needs no correlation
     if error.missing:
         _incomplete(resolved, "own_correlation", str(error))
-    elif not resolved.troubles:  # otherwise the leg at fault has been told of already
+    elif not _has_leg_trouble(resolved):  # otherwise the leg at fault has been told of already
         _refused(resolved, "own_correlation", f"the correlation cannot be looked up: {error}")
 
 

@@ -6,7 +6,7 @@ import math
 from collections import Counter
 from dataclasses import dataclass
 
-from spreadgui.book.entries import is_delivery, quoted
+from spreadgui.book.entries import is_delivery, quoted, shown
 from spreadgui.book.records import Book, Mark, Market
 from spreadgui.market.time import delivery_years_apart
 
@@ -27,16 +27,22 @@ class Quotes:
     _marks: dict[str, dict[str, Mark]]
     _correlations: dict[frozenset[str], float]
     _twice: frozenset[str]
+    _marks_twice: frozenset[tuple[str, str]]
+    _pairs_twice: frozenset[frozenset[str]]
 
     @staticmethod
     def of(book: Book) -> Quotes:
         """The index over the marks of `book`."""
         names = Counter(market.name for market in book.markets)
+        contracts = Counter((market.name, mark.delivery) for market in book.markets for mark in market.marks)
+        pairs = Counter(frozenset((pair.first, pair.second)) for pair in book.correlations)
         return Quotes(
             {market.name: market for market in book.markets},
             {market.name: {mark.delivery: mark for mark in market.marks} for market in book.markets},
             {frozenset((pair.first, pair.second)): pair.correlation for pair in book.correlations},
             frozenset(name for name, count in names.items() if count > 1),
+            frozenset(contract for contract, count in contracts.items() if count > 1),
+            frozenset(pair for pair, count in pairs.items() if count > 1),
         )
 
     def market(self, name: str) -> Market:
@@ -49,36 +55,46 @@ class Quotes:
             raise UnknownMarkError(f"there is no market {quoted(name)} in this book") from None
 
     def mark(self, name: str, delivery: str) -> Mark:
-        """The mark of a market's delivery; raises UnknownMarkError where there is none."""
-        market = self.market(name)
+        """The mark of a market's delivery; raises UnknownMarkError where there is not exactly one."""
+        self.market(name)
         if not delivery:
-            raise UnknownMarkError(f"the delivery of {market.name} is missing", missing=True)
+            raise UnknownMarkError(f"the delivery of {shown(name)} is missing", missing=True)
         if not is_delivery(delivery):
             raise UnknownMarkError(f"expected a delivery month written as 2027-01, got {quoted(delivery)}")
+        if (name, delivery) in self._marks_twice:
+            raise UnknownMarkError(f"{shown(name)} has more than one mark for {delivery}")
         try:
             return self._marks[name][delivery]
         except KeyError:
-            raise UnknownMarkError(f"{market.name} has no mark for {delivery}", missing=True) from None
+            raise UnknownMarkError(f"{shown(name)} has no mark for {delivery}", missing=True) from None
 
     def correlation(self, first: str, first_delivery: str, second: str, second_delivery: str) -> float:
         """The correlation of two contracts, as a decimal.
 
         Two deliveries of one market: exp(-tie strength * years apart). Two markets: their correlation, for
         deliveries apart times exp(-(mean of the two tie strengths) * years apart). Raises UnknownMarkError where the
-        book holds no correlation of the two markets.
+        book holds not exactly one correlation of the two markets, or a tie strength below zero.
         """
         for delivery in (first_delivery, second_delivery):
             if delivery and not is_delivery(delivery):
                 raise UnknownMarkError(f"expected a delivery month written as 2027-01, got {quoted(delivery)}")
         apart = delivery_years_apart(first_delivery, second_delivery) if first_delivery and second_delivery else 0.0
-        strengths = self.market(first).tie_strength, self.market(second).tie_strength
-        tie = math.exp(-0.5 * (strengths[0] + strengths[1]) * apart)
+        tie = math.exp(-0.5 * apart * self._tie_strength(first) - 0.5 * apart * self._tie_strength(second))
         if first == second:
             return tie
+        pair, names = frozenset((first, second)), f"{shown(first)} and {shown(second)}"
+        if pair in self._pairs_twice:
+            raise UnknownMarkError(f"the book has more than one correlation of {names}")
         try:
-            return self._correlations[frozenset((first, second))] * tie
+            return self._correlations[pair] * tie
         except KeyError:
-            raise UnknownMarkError(f"the book has no correlation of {first} and {second}", missing=True) from None
+            raise UnknownMarkError(f"the book has no correlation of {names}", missing=True) from None
+
+    def _tie_strength(self, name: str) -> float:
+        strength = self.market(name).tie_strength
+        if not strength >= 0:
+            raise UnknownMarkError(f"the tie strength of {shown(name)} is {strength:g}, below zero")
+        return strength
 
 
 def quantity_unit(unit: str) -> str:
