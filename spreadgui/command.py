@@ -13,18 +13,20 @@ from collections.abc import Callable, Iterable, Sequence
 from pathlib import Path
 from typing import TypeVar
 
+import msgspec
+
 import spreadgui
 from spreadgui import shipped
 from spreadgui.book.entries import EntryError, quoted
 from spreadgui.book.entries import date as read_date
 from spreadgui.book.faults import BookError, Fault
-from spreadgui.book.positions_csv import read_positions
+from spreadgui.book.loading import load
 from spreadgui.book.reading import read_book
 from spreadgui.book.records import Book
 
 Result = TypeVar("Result")
 
-CLEAN, FAULTY = 0, 2
+CLEAN, FAULTY, BROKEN = 0, 2, 3
 _NO_SCREEN = (
     "spreadgui: there is no display to open a window on; without one, try "
     "`spreadgui value BOOK --csv -` or `spreadgui picture BOOK --png FILE`"
@@ -50,6 +52,11 @@ def main(arguments: Sequence[str] | None = None) -> int:
         return 1
     except KeyboardInterrupt:
         return 130
+    except Exception as error:
+        if sys.flags.dev_mode:
+            raise
+        _tell([f"spreadgui: a fault of this program, not of your input: {type(error).__name__}: {error}"])
+        return BROKEN
     return FAULTY
 
 
@@ -112,15 +119,8 @@ def _value(given: list[str]) -> int:
 
 def _book_to_value(path: Path, date: str | None) -> Book:
     day = _day(date)
-    if path.suffix.lower() == ".csv":
-        positions = _placed(path, lambda: read_positions(path))
-        return Book(title=path.stem, currency="", valuation_date=day or datetime.date.today(), positions=positions)
-    book = _placed(path, lambda: read_book(path))
-    if day is None:
-        return book
-    import msgspec
-
-    return msgspec.structs.replace(book, valuation_date=day)
+    book = _placed(path, lambda: load(path, day or datetime.date.today()))
+    return book if day is None else msgspec.structs.replace(book, valuation_date=day)
 
 
 def _day(text: str | None) -> datetime.date | None:

@@ -7,6 +7,7 @@ and scaling are, and which field of the position typing into it sets. Input colu
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass
 
@@ -16,16 +17,18 @@ from spreadgui.book.fields import BY_KEY, Field
 from spreadgui.pricing.methods import METHODS
 from spreadgui.pricing.methods import method as method_of
 from spreadgui.valuation.results import LiveResults, State
-from spreadgui.valuation.shown import number_text, trimmed_text
-from spreadgui.valuation.slate import FloatArray, Slate
+from spreadgui.valuation.shown import trimmed_text
+from spreadgui.valuation.slate import FloatArray, RowArray, Slate
 
-Numbers = Callable[[Slate, LiveResults], FloatArray]
+Rows = slice | RowArray
+Numbers = Callable[[Slate, LiveResults, Rows], FloatArray]
 Words = Callable[[Slate, LiveResults, int], str]
+ALL_ROWS = slice(None)
 
 
 @dataclass(frozen=True)
 class Column:
-    """One column. Exactly one of `numbers` (whole column, code units) and `words` (one cell) reads it.
+    """One column. Exactly one of `numbers` (some rows at once, code units) and `words` (one cell) reads it.
 
     On screens a number is multiplied by `scale` and shown with `decimals` (at least `least_decimals` where those
     differ). `computed` columns show the state of their row when it is not current. `own` columns show what the row
@@ -67,19 +70,19 @@ def _field_words(key: str) -> Words:
 
 
 def _input(key: str) -> Numbers:
-    return lambda slate, _results: slate.values(key)
+    return lambda slate, _results, rows: slate.values(key)[rows]
 
 
 def _output(key: str) -> Numbers:
-    return lambda _slate, results: results.values(key)
+    return lambda _slate, results, rows: results.values(key)[rows]
 
 
 def _for_position(key: str) -> Numbers:
-    return lambda slate, results: slate.values("quantity") * results.values(key)
+    return lambda slate, results, rows: slate.values("quantity")[rows] * results.values(key)[rows]
 
 
 def _gap(key: str) -> Numbers:
-    return lambda _slate, results: results.values(key) - results.values("yardstick")
+    return lambda _slate, results, rows: results.values(key)[rows] - results.values("yardstick")[rows]
 
 
 def _worded(key: str, *, unit: str = "", pinned: bool = False) -> Column:
@@ -200,7 +203,7 @@ COLUMNS: tuple[Column, ...] = (
               _for_position("value"), "{currency}", decimals=0, pinned=True),
     _worded("side"),
     _worded("kind"),
-    _entered("quantity", "of payoff unit", 3, 0, lambda slate, _results: np.abs(slate.values("quantity"))),
+    _entered("quantity", "payoff units", 3, 0, lambda slate, _results, rows: np.abs(slate.values("quantity")[rows])),
     Column("unit", "Unit", "What the payoff is quoted in: the unit of the long leg's market.",
            words=lambda slate, _results, row: slate.units[row]),
     _worded("long_leg"),
@@ -244,23 +247,21 @@ VALUE_TABLE: tuple[str, ...] = (
 )  # fmt: skip
 
 
-def exact_text(column: Column, slate: Slate, results: LiveResults, numbers: FloatArray | None, row: int) -> str:
-    """A cell for files: numbers in code units to the last digit, empty where there is none."""
-    if numbers is None:
-        assert column.words is not None
-        return column.words(slate, results, row)
-    value = float(numbers[row])
-    return repr(value) if np.isfinite(value) else ""
+def exact_texts(column: Column, slate: Slate, results: LiveResults, rows: range) -> list[str]:
+    """The cells of `rows` for files: numbers in code units to the last digit, empty where there is none."""
+    if column.numbers is None:
+        return _words_of(column, slate, results, rows)
+    numbers = column.numbers(slate, results, slice(rows.start, rows.stop)).tolist()
+    return [repr(number) if math.isfinite(number) else "" for number in numbers]
 
 
-def screen_text(column: Column, slate: Slate, results: LiveResults, numbers: FloatArray | None, row: int) -> str:
-    """A cell for screens; a computed one whose row is not current is empty, its state being told otherwise."""
-    if numbers is None:
-        assert column.words is not None
-        return column.words(slate, results, row)
-    return column.shown(float(numbers[row]))
+def screen_texts(column: Column, slate: Slate, results: LiveResults, rows: range) -> list[str]:
+    """The cells of `rows` for screens; one without a number is empty, its state being told beside it."""
+    if column.numbers is None:
+        return _words_of(column, slate, results, rows)
+    return [column.shown(number) for number in column.numbers(slate, results, slice(rows.start, rows.stop)).tolist()]
 
 
-__all__ = [
-    "BY_COLUMN_KEY", "COLUMNS", "SCREEN_COLUMNS", "VALUE_TABLE", "Column", "exact_text", "number_text", "screen_text",
-]  # fmt: skip
+def _words_of(column: Column, slate: Slate, results: LiveResults, rows: range) -> list[str]:
+    assert column.words is not None
+    return [column.words(slate, results, row) for row in rows]

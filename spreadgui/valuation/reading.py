@@ -1,4 +1,4 @@
-"""The Reading: one position by every method, side by side."""
+"""The Reading: one position by every method, side by side, with its sensitivities and the units they are counted in."""
 
 from __future__ import annotations
 
@@ -6,19 +6,31 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from spreadgui.market.contracts import Readiness
-from spreadgui.market.quotes import quantity_unit
-from spreadgui.pricing.methods import METHODS
+from spreadgui.market.contracts import Readiness, Shape
+from spreadgui.market.quotes import UnknownMarkError, quantity_unit
+from spreadgui.pricing.methods import METHODS, Method
 from spreadgui.pricing.methods import method as method_of
+from spreadgui.valuation.columns import BY_COLUMN_KEY
 from spreadgui.valuation.price import price_rows
-from spreadgui.valuation.results import SENSITIVITIES, output_row
+from spreadgui.valuation.results import SENSITIVITIES, State, output_row
 from spreadgui.valuation.shown import trimmed_text
-from spreadgui.valuation.slate import KINDS, Slate
+from spreadgui.valuation.slate import KINDS, FloatArray, Slate
+
+# Below this share of the larger leg the Yardstick's own error (1e-10 of it) would be more than a per cent of a premium.
+LEAST_PREMIUM = 1e-8
+# What stands for the currency's units where a market's unit does not say what is counted.
+NAMELESS_UNIT = "units"
+_NAN = float("nan")
 
 
 @dataclass(frozen=True)
 class MethodReading:
-    """One method's word on a position. NaN where the method does not cover it; `gap` is against the Yardstick."""
+    """One method's word on a position. NaN where the method does not cover it, or where there is no gap to tell.
+
+    `gap` is against the Yardstick, in the unit of a unit value; `position_gap` the same for the signed quantity, in
+    currency; `gap_share` a decimal of the Yardstick's unit value. `remark` says why a number is missing. `chosen` is
+    the method that the book's value comes from, `reference` the one that the gaps are measured from.
+    """
 
     key: str
     name: str
@@ -26,16 +38,42 @@ class MethodReading:
     gap: float
     gap_share: float
     remark: str
+    position_gap: float = _NAN
+    reference: bool = False
+    chosen: bool = False
+    about: str = ""
+
+
+@dataclass(frozen=True)
+class SensitivityReading:
+    """One sensitivity as screens show it: `unit_value` for one unit of payoff, `position_value` for the quantity.
+
+    Both are for the step that `scaling` names ("per 1.00", "per 1 vol point"). `unit` is what `position_value` counts:
+    the quantity of the leg's own market for a delta and, per 1.00 more, for a gamma; the book's money for the others.
+    `absence` says in words why there is no such sensitivity; both numbers are NaN then.
+    """
+
+    key: str
+    name: str
+    scaling: str
+    unit_value: float
+    position_value: float
+    unit: str
+    about: str
+    absence: str = ""
 
 
 @dataclass(frozen=True)
 class Reading:
     """All that the panel shows of one position, stamped with the revision it was read from.
 
-    Unit values are per unit of payoff, `quantity` is signed. `sensitivities` are plain derivatives of the unit value by
-    the book's method, in the order of results.SENSITIVITIES. `reason` is set, and nothing else to be relied upon, where
-    the position could not be priced. `subject` is the position in words, `unit` what a unit value is counted in,
-    `method` the name of the book's method, which `unit_value` and the sensitivities come from.
+    Unit values are per unit of payoff, `quantity` is signed. `subject` is the position in words, `unit` what a unit
+    value is counted in, `quantity_unit` what the quantity is counted in ("" where the book does not say). `method` is
+    the name of what `unit_value` and the sensitivities come from: the book's method, Black-76 for one leg, the
+    discounted difference for a forward. `intrinsic` is NaN for a forward, which has none. `sensitivities` are plain
+    derivatives of the unit value in the order of results.SENSITIVITIES, `sensitivity_rows` the same as screens show
+    them. Where the position could not be priced `reason` is set, `state` says whether it is incomplete or refused,
+    and no number may be relied upon.
     """
 
     revision: int
@@ -50,6 +88,10 @@ class Reading:
     methods: tuple[MethodReading, ...]
     sensitivities: tuple[float, ...]
     reason: str = ""
+    state: State = State.CURRENT
+    kind: str = "call"
+    quantity_unit: str = ""
+    sensitivity_rows: tuple[SensitivityReading, ...] = ()
 
     @property
     def time_value(self) -> float:
@@ -58,61 +100,183 @@ class Reading:
 
     @property
     def position_value(self) -> float:
+        """Quantity times unit value, in currency; below zero for what the desk owes."""
         return self.quantity * self.unit_value
 
 
 def read_position(slate: Slate, row: int) -> Reading:
-    """The Reading of the position at `row`; one that is not ready says why."""
+    """The Reading of the position at `row`; one that is not ready says why.
+
+    IndexError if there is no such row.
+    """
     if slate.readiness[row] != Readiness.READY:
-        return _unreadable(slate, row, "; ".join(trouble.sentence for trouble in slate.troubles[row]))
+        troubles = slate.troubles[row]
+        refused = any(trouble.readiness is Readiness.REFUSED for trouble in troubles)
+        state = State.REFUSED if refused else State.INCOMPLETE
+        return _unreadable(slate, row, state, "; ".join(trouble.sentence for trouble in troubles))
     part = price_rows(slate, np.array([row]))
     if row in part.refused:
-        return _unreadable(slate, row, part.refused[row])
+        return _unreadable(slate, row, State.REFUSED, part.refused[row])
     outputs = part.outputs[:, 0]
-    reference = float(outputs[output_row("yardstick")])
+    position = slate.book.positions[row]
     return Reading(
-        slate.revision,
-        row,
-        *_words(slate, row),
-        float(slate.values("quantity")[row]),
-        float(outputs[output_row("value")]),
-        intrinsic_value(slate, row),
-        tuple(_method_reading(method.key, float(outputs[output_row(method.key)]), reference) for method in METHODS),
-        tuple(float(outputs[output_row(key)]) for key in SENSITIVITIES),
+        revision=slate.revision,
+        row=row,
+        subject=_subject(slate, row),
+        unit=slate.units[row],
+        currency=slate.book.currency,
+        method=_method_name(slate, row),
+        quantity=float(slate.values("quantity")[row]),
+        unit_value=float(outputs[output_row("value")]),
+        intrinsic=intrinsic_value(slate, row),
+        methods=_method_readings(slate, row, outputs),
+        sensitivities=tuple(float(outputs[output_row(key)]) for key in SENSITIVITIES),
+        kind=position.kind,
+        quantity_unit=quantity_unit(slate.units[row]),
+        sensitivity_rows=tuple(_sensitivity_reading(slate, row, key, outputs) for key in SENSITIVITIES),
     )
 
 
 def intrinsic_value(slate: Slate, row: int) -> float:
-    """What the payoff would be worth if both forwards stood still to the expiry: its discounted payoff today."""
-    cell = {key: float(slate.values(key)[row]) for key in ("forward_long", "forward_short", "strike", "discount")}
-    long = np.nan_to_num(cell["forward_long"]) * float(slate.values("ratio_long")[row])
-    short = np.nan_to_num(cell["forward_short"]) * float(slate.values("ratio_short")[row])
-    above = float(long - short - cell["strike"])
+    """What the payoff would be worth if both forwards stood still to the expiry: its discounted payoff today.
+
+    NaN for a forward: it is no option, and has neither intrinsic nor time value.
+    """
     kind = KINDS[slate.kind[row]]
-    payoff = {"call": max(above, 0.0), "put": max(-above, 0.0), "forward": above}[kind]
-    return cell["discount"] * payoff
+    if kind == "forward":
+        return _NAN
+    long, short = _folded_forwards(slate, row)
+    above = long - short - float(slate.values("strike")[row])
+    return float(slate.values("discount")[row]) * max(above if kind == "call" else -above, 0.0)
 
 
-def _words(slate: Slate, row: int) -> tuple[str, str, str, str]:
-    """Subject, unit, currency and the book's method in words."""
-    position, unit = slate.book.positions[row], slate.units[row]
-    quantity = trimmed_text(abs(float(slate.values("quantity")[row])), 3)
-    held = " ".join(filter(None, (position.side, position.kind, "·", quantity, quantity_unit(unit))))
-    subject = f"{position.name or f'Position {row + 1}'} · {held}"
-    return subject, unit, slate.book.currency, method_of(slate.book.method).name
+def _folded_forwards(slate: Slate, row: int) -> tuple[float, float]:
+    """Ratio times forward of either leg, zero for a leg that is not there."""
+    long, short = (
+        float(np.nan_to_num(slate.values(f"forward_{side}")[row]) * slate.values(f"ratio_{side}")[row])
+        for side in ("long", "short")
+    )
+    return long, short
 
 
-def _method_reading(key: str, value: float, reference: float) -> MethodReading:
-    method = method_of(key)
-    gap = np.nan if method.reference else value - reference
-    share = gap / reference if reference > 0 else np.nan
-    remark = "reference" if method.reference else ("" if np.isfinite(value) else method.applies)
-    return MethodReading(key, method.name, value, float(gap), float(share), remark)
+def _subject(slate: Slate, row: int) -> str:
+    position = slate.book.positions[row]
+    words = [position.name or f"Position {row + 1}", f"{position.side} {position.kind}"]
+    if position.quantity is not None:
+        quantity = trimmed_text(abs(position.quantity), 3)
+        words.append(f"{quantity} {quantity_unit(slate.units[row])}".strip())
+    return " · ".join(words)
 
 
-def _unreadable(slate: Slate, row: int, reason: str) -> Reading:
-    nan = float("nan")
-    quantity = float(slate.values("quantity")[row])
+def _method_name(slate: Slate, row: int) -> str:
+    if KINDS[slate.kind[row]] == "forward":
+        return "Discounted difference"
+    return method_of(slate.book.method).name if slate.shape[row] == Shape.SPREAD else "Black-76"
+
+
+def _method_readings(slate: Slate, row: int, outputs: FloatArray) -> tuple[MethodReading, ...]:
+    """Every method in the order of the table; one entry for a payoff that no spread method has a say in."""
+    value = float(outputs[output_row("value")])
+    if KINDS[slate.kind[row]] == "forward":
+        remark, about = "needs no volatility, so no method", "The difference of the legs less the strike, discounted."
+    elif slate.shape[row] != Shape.SPREAD:
+        remark, about = "exact: one leg needs no spread method", "Black, Journal of Financial Economics 3 (1976)"
+    else:
+        return tuple(_method_reading(slate, row, method, outputs) for method in METHODS)
+    key = "forward" if KINDS[slate.kind[row]] == "forward" else "black76"
+    return (MethodReading(key, _method_name(slate, row), value, _NAN, _NAN, remark, chosen=True, about=about),)
+
+
+def _method_reading(slate: Slate, row: int, method: Method, outputs: FloatArray) -> MethodReading:
+    value, reference = float(outputs[output_row(method.key)]), float(outputs[output_row("yardstick")])
+    gap, share, remark = _NAN, _NAN, ""
+    if method.reference:
+        remark = "reference"
+    elif not method.accepts(slate.values("strike")[row]):
+        remark = method.applies
+    elif not np.isfinite([value, reference]).all():
+        remark = "out of the machine's reach here"
+    else:
+        gap = value - reference
+        enough = reference > LEAST_PREMIUM * max(_folded_forwards(slate, row))
+        share, remark = (gap / reference, "") if enough else (_NAN, "premium too small for a share")
+    return MethodReading(
+        method.key, method.name, value, gap, share, remark,
+        position_gap=float(slate.values("quantity")[row]) * gap,
+        reference=method.reference,
+        chosen=method.key == slate.book.method,
+        about=f"{method.applies} {method.source}.",
+    )  # fmt: skip
+
+
+def _sensitivity_reading(slate: Slate, row: int, key: str, outputs: FloatArray) -> SensitivityReading:
+    column = BY_COLUMN_KEY[key]
+    absence = _absence(slate, row, key)
+    value = _NAN if absence else column.scale * float(outputs[output_row(key)])
+    return SensitivityReading(
+        key=key,
+        name=column.heading,
+        scaling=column.unit if column.unit.startswith("per ") else "per 1.00",
+        unit_value=value,
+        position_value=float(slate.values("quantity")[row]) * value,
+        unit=_position_unit(slate, row, key),
+        about=column.help.partition(" Per unit of payoff")[0],
+        absence=absence,
+    )
+
+
+def _absence(slate: Slate, row: int, key: str) -> str:
+    """Why the position has no such sensitivity; empty where it has."""
+    shape = slate.shape[row]
+    lacking = {Shape.LONG_LEG_ONLY: "short", Shape.SHORT_LEG_ONLY: "long"}.get(Shape(shape))
+    if lacking is not None and key.endswith(f"_{lacking}"):
+        return f"no {lacking} leg"
+    if lacking is not None and key in ("gamma_cross", "correlation_sensitivity"):
+        return "one leg only"
+    if KINDS[slate.kind[row]] == "forward" and not key.startswith(("delta", "theta")):
+        return "none in a forward"
+    return ""
+
+
+def _position_unit(slate: Slate, row: int, key: str) -> str:
+    """What the position's sensitivity is counted in.
+
+    Money per 1.00 of money a unit is a count of units, so the delta of a leg is a quantity of that leg's own market,
+    whatever the payoff is counted in: GJ for the gas leg of a spark spread. A gamma is that quantity per 1.00 more;
+    the cross-gamma, as a change of the long delta, is counted as that is.
+    """
+    if not key.startswith(("delta", "gamma")):
+        return slate.book.currency
+    return _leg_unit(slate, row, "short" if key.endswith("_short") else "long") or NAMELESS_UNIT
+
+
+def _leg_unit(slate: Slate, row: int, side: str) -> str:
+    """What a leg's market is counted by. A leg without a market is quoted as the payoff is if its ratio is one."""
+    position = slate.book.positions[row]
+    leg = getattr(position, f"{side}_leg")
+    if leg:
+        try:
+            return quantity_unit(slate.quotes.market(leg).unit)
+        except UnknownMarkError:
+            return ""  # a name of its own for a leg with own marks
+    return quantity_unit(slate.units[row]) if getattr(position, f"{side}_ratio") == 1.0 else ""
+
+
+def _unreadable(slate: Slate, row: int, state: State, reason: str) -> Reading:
     return Reading(
-        slate.revision, row, *_words(slate, row), quantity, nan, nan, (), (nan,) * len(SENSITIVITIES), reason
+        revision=slate.revision,
+        row=row,
+        subject=_subject(slate, row),
+        unit=slate.units[row],
+        currency=slate.book.currency,
+        method=_method_name(slate, row),
+        quantity=float(slate.values("quantity")[row]),
+        unit_value=_NAN,
+        intrinsic=_NAN,
+        methods=(),
+        sensitivities=(_NAN,) * len(SENSITIVITIES),
+        reason=reason,
+        state=state,
+        kind=slate.book.positions[row].kind,
+        quantity_unit=quantity_unit(slate.units[row]),
     )

@@ -74,10 +74,12 @@ class LiveResults:
     state: CodeArray = field(default_factory=lambda: np.empty(0, dtype=np.int8))
     reasons: dict[int, str] = field(default_factory=dict)
     _touched: NDArray[np.int64] = field(default_factory=lambda: np.empty(0, dtype=np.int64))
+    _failed: RowArray = field(default_factory=lambda: np.empty(0, dtype=np.intp))
     _rows_moved_at: int = 0
 
     def follow(self, succession: Succession) -> None:
         """Stand on a new slate: rows that descend unchanged keep their results, the others await pricing."""
+        self._retry_failed()
         slate, old_rows = succession.slate, succession.old_rows
         kept = np.flatnonzero(old_rows >= 0)
         source = old_rows[kept]
@@ -108,6 +110,14 @@ class LiveResults:
                 self.state[row], self.reasons[row] = State.REFUSED, part.refused[row]
         return rows
 
+    def fail(self, sentence: str) -> RowArray:
+        """Pricing broke: every row that awaits it is refused with `sentence`, until the next slate tries it again."""
+        rows = self.pending()
+        self.state[rows] = State.REFUSED
+        self.reasons.update((row, sentence) for row in rows.tolist())
+        self._failed = rows
+        return rows
+
     def pending(self) -> RowArray:
         """The rows that await pricing."""
         return np.flatnonzero(self.state == State.PRICING)
@@ -120,6 +130,12 @@ class LiveResults:
     def reason(self, row: int) -> str:
         """Why a row is incomplete or refused, as one sentence; empty for the others."""
         return self.reasons.get(row, "")
+
+    def _retry_failed(self) -> None:
+        self.state[self._failed] = State.PRICING
+        for row in self._failed.tolist():
+            del self.reasons[row]
+        self._failed = self._failed[:0]
 
     def _settle_unready(self, rows: RowArray) -> None:
         """Rows that cannot be priced need no pricing thread to say so."""

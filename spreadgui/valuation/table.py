@@ -5,19 +5,18 @@ from __future__ import annotations
 import csv
 import io
 import json
-from collections.abc import Iterator
+import math
+from collections.abc import Iterator, Sequence
 from concurrent.futures import Executor
 from dataclasses import dataclass
 
-import numpy as np
-
 from spreadgui.book.records import Book
 from spreadgui.pricing.methods import method as method_of
-from spreadgui.valuation.columns import BY_COLUMN_KEY, VALUE_TABLE, Column, exact_text
+from spreadgui.valuation.columns import ALL_ROWS, BY_COLUMN_KEY, VALUE_TABLE, Column, exact_texts, screen_texts
 from spreadgui.valuation.price import chunks, price_rows
 from spreadgui.valuation.results import LiveResults, State
 from spreadgui.valuation.shown import number_text
-from spreadgui.valuation.slate import FloatArray, Slate, follow
+from spreadgui.valuation.slate import Slate, follow
 
 
 @dataclass(frozen=True)
@@ -50,16 +49,16 @@ def csv_text(valued: ValuedBook) -> str:
     stream = io.StringIO()
     writer = csv.writer(stream, lineterminator="\n")
     writer.writerow(VALUE_TABLE)
-    columns = _read_columns(valued)
-    for row in range(len(valued.slate)):
-        writer.writerow([exact_text(column, valued.slate, valued.results, numbers, row) for column, numbers in columns])
+    rows = range(len(valued.slate))
+    cells = [exact_texts(BY_COLUMN_KEY[key], valued.slate, valued.results, rows) for key in VALUE_TABLE]
+    writer.writerows(zip(*cells, strict=True))
     return stream.getvalue()
 
 
 def json_text(valued: ValuedBook) -> str:
     """The same table as JSON, under the book's title, day, currency and total; null where there is no number."""
     book = valued.slate.book
-    columns = _read_columns(valued)
+    cells = {key: _json_cells(valued, BY_COLUMN_KEY[key]) for key in VALUE_TABLE}
     head = {
         "title": book.title,
         "currency": book.currency,
@@ -67,10 +66,7 @@ def json_text(valued: ValuedBook) -> str:
         "method": book.method,
         "book_value": total_value(valued.results),
     }
-    positions = [
-        {column.key: _json_cell(valued, column, numbers, row) for column, numbers in columns}
-        for row in range(len(valued.slate))
-    ]
+    positions = [{key: cells[key][row] for key in VALUE_TABLE} for row in range(len(valued.slate))]
     return json.dumps({**head, "positions": positions}, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
 
 
@@ -87,14 +83,9 @@ def summary_text(valued: ValuedBook) -> str:
 
 def _summary_rows(valued: ValuedBook) -> Iterator[tuple[str, ...]]:
     keys = ("name", "position_value", "yardstick", "bjerksund_stensland", "kirk", "state", "reason")
-    columns = _read_columns(valued, keys)
-    yield tuple(column.heading for column, _ in columns)
-    for row in range(len(valued.slate)):
-        yield tuple(
-            column.shown(float(numbers[row])) if numbers is not None
-            else exact_text(column, valued.slate, valued.results, None, row)
-            for column, numbers in columns
-        )  # fmt: skip
+    columns, rows = [BY_COLUMN_KEY[key] for key in keys], range(len(valued.slate))
+    yield tuple(column.heading for column in columns)
+    yield from zip(*(screen_texts(column, valued.slate, valued.results, rows) for column in columns), strict=True)
 
 
 def _aligned(rows: list[tuple[str, ...]]) -> list[str]:
@@ -109,15 +100,8 @@ def _aligned(rows: list[tuple[str, ...]]) -> list[str]:
     ]
 
 
-def _read_columns(valued: ValuedBook, keys: tuple[str, ...] = VALUE_TABLE) -> list[tuple[Column, FloatArray | None]]:
-    columns = [BY_COLUMN_KEY[key] for key in keys]
-    return [
-        (column, None if column.numbers is None else column.numbers(valued.slate, valued.results)) for column in columns
-    ]
-
-
-def _json_cell(valued: ValuedBook, column: Column, numbers: FloatArray | None, row: int) -> str | float | None:
-    if numbers is None:
-        return exact_text(column, valued.slate, valued.results, None, row)
-    value = float(numbers[row])
-    return value if np.isfinite(value) else None
+def _json_cells(valued: ValuedBook, column: Column) -> Sequence[str | float | None]:
+    if column.numbers is None:
+        return exact_texts(column, valued.slate, valued.results, range(len(valued.slate)))
+    numbers = column.numbers(valued.slate, valued.results, ALL_ROWS).tolist()
+    return [number if math.isfinite(number) else None for number in numbers]
