@@ -1,0 +1,1 @@
+"""The Landscape: one quantity of one position drawn over its two underlyings. Only this room imports pyqtgraph."""

@@ -1,0 +1,1 @@
+"""Panes of words and numbers beside the grid: the Reading."""

@@ -1,0 +1,287 @@
+"""The main window: assembles the panes and joins acts to those who carry them out. Nothing is computed here."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from PySide6.QtCore import Qt, QTimer, Slot
+from PySide6.QtGui import QAction, QCloseEvent
+from PySide6.QtWidgets import QApplication, QMainWindow, QMenu, QSplitter, QToolBar, QVBoxLayout, QWidget
+
+from spreadgui.book.records import Book
+from spreadgui.desk import cautions
+from spreadgui.desk.acts import ACTS, MENUS, Act
+from spreadgui.desk.bookbar import BookBar
+from spreadgui.desk.files import BookFiles
+from spreadgui.desk.grid.pane import PositionsPane
+from spreadgui.desk.look.icons import icon, renew_icons, set_icon
+from spreadgui.desk.look.pane import Pane
+from spreadgui.desk.look.theme import Theme, apply
+from spreadgui.desk.message import MessageStrip
+from spreadgui.desk.panels.reading import ReadingPane
+from spreadgui.desk.status import StatusLine
+from spreadgui.desk.workbench import Workbench
+
+if TYPE_CHECKING:
+    from spreadgui.desk.landscape.pane import LandscapePane
+
+NO_ROW = "Choose a position in the grid."
+READING_HEIGHT = 350
+LATE_MILLISECONDS = 120
+
+
+class Window(QMainWindow):
+    """The program's window on one book. Close it (or call `shut`) before it dies: the pricing thread ends there."""
+
+    def __init__(self, book: Book, path: Path | None, theme: Theme) -> None:
+        super().__init__()
+        self.theme = theme
+        self.workbench = Workbench(book, self)
+        self.files = BookFiles(self.workbench, self)
+        self.files.path = path
+        self.positions = PositionsPane(self.workbench, theme)
+        self.reading = ReadingPane(theme)
+        # The Landscape loads pyqtgraph, which takes as long as all else: it comes after the first paint (`complete`).
+        self._vacant = Pane("Landscape")
+        self.landscape: LandscapePane | None = None
+        self.message = MessageStrip()
+        self.bar = BookBar(self.workbench)
+        self.status = StatusLine(self.workbench, self)
+        # An answer that comes at once must not make the panes flicker.
+        self._late = QTimer(self, singleShot=True, interval=LATE_MILLISECONDS)
+        self._late.timeout.connect(self._fade)
+        self.actions_by_id: dict[str, QAction] = {}
+        self.handlers = self._handlers()
+        self._assemble()
+        self._join()
+        self._refresh_title()
+
+    # --- assembly
+
+    def _assemble(self) -> None:
+        self.setWindowIcon(icon("app", self.theme))
+        self._make_acts()
+        self._right = QSplitter(Qt.Orientation.Vertical)
+        for pane in (self._vacant, self.reading):
+            self._right.addWidget(pane)
+        self._across = QSplitter(Qt.Orientation.Horizontal)
+        for part in (self.positions, self._right):
+            self._across.addWidget(part)
+        for splitter, shares in ((self._right, (58, 42)), (self._across, (54, 46))):
+            splitter.setChildrenCollapsible(False)
+            splitter.setHandleWidth(8)
+            splitter.setSizes([share * 20 for share in shares])
+        for place, share in enumerate((54, 46)):
+            self._across.setStretchFactor(place, share)
+        # A window that grows gives the Landscape more to draw on; the Reading's tables need what they need.
+        self._right.setStretchFactor(0, 1)
+        body = QWidget()
+        column = QVBoxLayout(body)
+        column.setContentsMargins(10, 0, 10, 4)
+        column.setSpacing(4)
+        column.addWidget(self.bar)
+        column.addWidget(self.message)
+        column.addWidget(self._across, 1)
+        self.setCentralWidget(body)
+        self.setStatusBar(self.status)
+        self.resize(1600, 1000)
+
+    def _make_acts(self) -> None:
+        bar = QToolBar("Acts")
+        bar.setMovable(False)
+        bar.setToolButtonStyle(Qt.ToolButtonStyle.ToolButtonTextBesideIcon)
+        bar.setContextMenuPolicy(Qt.ContextMenuPolicy.PreventContextMenu)
+        self.addToolBar(bar)
+        menus = {words: self.menuBar().addMenu(words) for words in MENUS}
+        for act in ACTS:
+            action = self._make_act(act)
+            menu = menus[act.menu]
+            if act.parted:
+                menu.addSeparator()
+                if act.on_bar:
+                    bar.addSeparator()
+            menu.addAction(action)
+            if act.on_bar:
+                bar.addAction(action)
+            if act.id == "open":
+                self._recent = menu.addMenu("Recent books")
+                self._recent.aboutToShow.connect(self._fill_recent)
+
+    def _make_act(self, act: Act) -> QAction:
+        action = QAction(act.words, self)
+        action.setShortcut(act.keys)
+        action.setToolTip(f"{act.help}  {act.keys}".strip())
+        action.setStatusTip(act.help)
+        action.triggered.connect(self.handlers[act.id])
+        if act.icon:
+            set_icon(action, act.icon, self.theme)
+        self.actions_by_id[act.id] = action
+        return action
+
+    def _handlers(self) -> dict[str, Callable[[], object]]:
+        """Who carries out each act of the acts table."""
+        return {
+            "new": self.files.new,
+            "open": self.files.choose,
+            "save": self.files.save,
+            "save_as": self.files.save_as,
+            "quit": self.close,
+            "undo": self.workbench.undo,
+            "redo": self.workbench.redo,
+            "edit_cell": self.positions.edit_current,
+            "clear": self.positions.clear_cells,
+            "insert_row": self.positions.insert_row,
+            "duplicate_rows": self.positions.duplicate_rows,
+            "delete_rows": self.positions.delete_rows,
+            "go_positions": self.positions.view.setFocus,
+            "go_landscape": self._go_to_landscape,
+            "go_reading": self.reading.setFocus,
+            "switch_look": self.switch_look,
+            "cautions": lambda: cautions.show_cautions(self),
+            "about": lambda: cautions.show_about(self),
+        }
+
+    def _join(self) -> None:
+        workbench = self.workbench
+        workbench.read.connect(self.reading.show_reading)
+        workbench.followed.connect(self._on_followed)
+        workbench.saved_changed.connect(self._refresh_title)
+        workbench.failed.connect(self.message.say)
+        workbench.finished.connect(self._settle_message)
+        self.files.moved.connect(self._refresh_title)
+        self.files.failed.connect(self.message.say)
+        self.files.done.connect(self._on_done)
+        self.positions.told.connect(self.status.tell)
+        self.bar.told.connect(self.status.tell)
+        self.positions.row_changed.connect(self._look_at)
+        self._look_at(-1)
+
+    def complete(self) -> None:
+        """Bring in the Landscape, and look at the first position."""
+        from spreadgui.desk.landscape.pane import LandscapePane
+
+        if self.landscape is not None:
+            return
+        self.landscape = LandscapePane(self.theme)
+        self._right.replaceWidget(0, self.landscape)
+        self._vacant.deleteLater()
+        self._share_height()
+        self.landscape.asked.connect(self._ask_again)
+        self.workbench.drawn.connect(self.landscape.show_surface)
+        self.workbench.drawn.connect(self._late.stop)  # the drawing is the last answer about a row
+        if self.positions.view.current_row() < 0:
+            self.positions.view.go_to(0, 0)
+        self.positions.view.setFocus()
+        self._ask_again()
+
+    def _share_height(self) -> None:
+        """The Reading as high as its tables need, as far as the Landscape keeps the larger part."""
+        height = sum(self._right.sizes())
+        reading = min(READING_HEIGHT, round(0.46 * height))
+        self._right.setSizes([height - reading, reading])
+
+    # --- what is looked at
+
+    @Slot()
+    def _ask_again(self) -> None:
+        self._look_at(self.positions.view.current_row())
+
+    @Slot(int)
+    def _look_at(self, row: int) -> None:
+        """The Reading and the Landscape are of this row from now on."""
+        if row < 0:
+            self.workbench.set_focus(None, None)
+            self.reading.show_nothing(NO_ROW)
+            if self.landscape is not None:
+                self.landscape.show_nothing(NO_ROW)
+            return
+        self._late.start()
+        self.workbench.set_focus(row, None if self.landscape is None else self.landscape.request(row))
+
+    def _go_to_landscape(self) -> None:
+        if self.landscape is not None:
+            self.landscape.setFocus()
+
+    @Slot()
+    def _on_followed(self) -> None:
+        self._refresh_title()
+        if self.workbench.focus is not None:
+            self._late.start()
+
+    @Slot()
+    def _fade(self) -> None:
+        """What the two panes show still speaks of another row or another book: fade its ink until the answer comes."""
+        self.reading.show_waiting()
+        if self.landscape is not None:
+            self.landscape.show_waiting()
+
+    # --- what is said
+
+    @Slot()
+    def _refresh_title(self) -> None:
+        book = self.workbench.book
+        self.setWindowTitle(f"{book.title or 'Untitled book'}[*] – spreadgui")
+        self.setWindowModified(self.workbench.modified)
+        for act, words, verb in (
+            ("undo", self.workbench.undo_words, "Undo"),
+            ("redo", self.workbench.redo_words, "Redo"),
+        ):
+            self.actions_by_id[act].setEnabled(words is not None)
+            self.actions_by_id[act].setText(verb)
+            self.actions_by_id[act].setToolTip(f"{verb}: {words}" if words else f"Nothing to {verb.lower()}")
+
+    @Slot(str)
+    def _on_done(self, sentence: str) -> None:
+        self.message.put_away()
+        self.status.tell(sentence)
+
+    @Slot()
+    def _settle_message(self) -> None:
+        """Pricing that works again takes its own message away."""
+        failure = self.workbench.last_failure
+        over = failure is not None and failure.revision < self.workbench.slate.revision
+        if over and failure is not None and self.message.sentence() == failure.sentence:
+            self.message.put_away()
+
+    @Slot()
+    def _fill_recent(self) -> None:
+        self._recent.clear()
+        for path in self.files.recent():
+            self._add_recent(self._recent, path)
+        if self._recent.isEmpty():
+            self._recent.addAction("None yet").setEnabled(False)
+
+    def _add_recent(self, menu: QMenu, path: Path) -> None:
+        action = menu.addAction(path.name)
+        action.setToolTip(str(path))
+        action.triggered.connect(lambda: self.files.open_asking(path))
+
+    # --- look and end
+
+    def switch_look(self) -> None:
+        """The other look, light or dark."""
+        self.theme = self.theme.switched()
+        app = QApplication.instance()
+        assert isinstance(app, QApplication)
+        apply(app, self.theme)
+        renew_icons(self, self.theme)
+        for pane in (self.positions, self.reading, self.landscape):
+            if pane is not None:
+                pane.set_theme(self.theme)
+
+    def complete_soon(self) -> None:
+        """`complete` once the window has been painted."""
+        QTimer.singleShot(0, self.complete)
+
+    def closeEvent(self, event: QCloseEvent) -> None:
+        if not self.files.may_leave():
+            event.ignore()
+            return
+        self.shut()
+        event.accept()
+
+    def shut(self) -> None:
+        """End the pricing thread."""
+        self.workbench.close()

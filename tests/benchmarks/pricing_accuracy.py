@@ -1,0 +1,193 @@
+"""How accurate the methods are. Prints the figures quoted in the docstrings of spreadgui.pricing.
+
+    python tests/benchmarks/pricing_accuracy.py [cases in the hard box]
+ First the Yardstick over the hard box, and over an ordinary one, against a slow integration that shares no idea with
+it: the conditional Black value of the long leg, summed over the short leg's normal factor by 16-node Gauss-Legendre
+panels that are graded towards every point where the conditional option passes through the money. That integration is
+itself first held against tests/reference/integrated.csv. Then the closed forms over the ordinary box against the
+Yardstick.
+"""
+
+from __future__ import annotations
+
+import csv
+import sys
+from pathlib import Path
+from typing import NamedTuple
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.special import ndtr
+
+from spreadgui.pricing import methods, yardstick
+
+Array = NDArray[np.float64]
+
+NODES, WEIGHTS = np.polynomial.legendre.leggauss(16)
+REFERENCE = Path(__file__).parent.parent / "reference" / "integrated.csv"
+
+
+class Options(NamedTuple):
+    """Undiscounted options of one year, so that a volatility is a deviation to expiry."""
+
+    forward_long: Array
+    forward_short: Array
+    strike: Array
+    vol_long: Array
+    vol_short: Array
+    correlation: Array
+
+
+def hard_box(draw: np.random.Generator, count: int) -> Options:
+    """Correlation -0.9999..0.9999 (half of them crowded to the ends), deviations 0.005..2.5 (three in ten nearly
+    equal), strikes -2..2 short forwards (some tiny), long forwards within four deviations of the money."""
+    short = np.full(count, 100.0)
+    strike = short * draw.uniform(-2.0, 2.0, count) * draw.choice([1.0, 0.1, 0.01, 1e-4], count)
+    low, high = np.log(0.005), np.log(2.5)
+    long_vol, short_vol = np.exp(draw.uniform(low, high, count)), np.exp(draw.uniform(low, high, count))
+    alike = np.clip(long_vol * draw.uniform(0.9, 1.1, count), 0.005, 2.5)
+    short_vol = np.where(draw.random(count) < 0.3, alike, short_vol)
+    crowded = draw.choice([-1.0, 1.0], count) * (1.0 - 10.0 ** draw.uniform(-4.0, -0.5, count))
+    correlation = np.where(draw.random(count) < 0.5, draw.uniform(-0.9999, 0.9999, count), crowded)
+    spread = np.sqrt((long_vol - short_vol) ** 2 + 2.0 * long_vol * short_vol * (1.0 - correlation))
+    money = np.where(short + strike > 1.0, short + strike, short)
+    return Options(
+        money * np.exp(draw.uniform(-4.0, 4.0, count) * spread), short, strike, long_vol, short_vol, correlation
+    )
+
+
+def ordinary_box(draw: np.random.Generator, count: int) -> Options:
+    """Strikes -0.5..0.5 short forwards, long forwards within two deviations of the money, volatilities 10..60 % over
+    0.1..3 years, correlation -0.9..0.95."""
+    short, root_time = np.full(count, 100.0), np.sqrt(draw.uniform(0.1, 3.0, count))
+    strike = short * draw.uniform(-0.5, 0.5, count)
+    long_vol, short_vol = draw.uniform(0.1, 0.6, count) * root_time, draw.uniform(0.1, 0.6, count) * root_time
+    correlation = draw.uniform(-0.9, 0.95, count)
+    spread = np.sqrt((long_vol - short_vol) ** 2 + 2.0 * long_vol * short_vol * (1.0 - correlation))
+    long = (short + strike) * np.exp(draw.uniform(-2.0, 2.0, count) * spread)
+    return Options(long, short, strike, long_vol, short_vol, correlation)
+
+
+def panel_ends(f1: float, f2: float, k: float, a: float, b: float, r: float) -> Array:
+    """Ends of the panels: half-unit steps, and steps that double away from each crossing of the money and each
+    extreme of the conditional moneyness, from a sixteenth of the conditional option's own width."""
+    low, high = min(0.0, b, r * a) - 9.5, max(0.0, b, r * a) + 9.5
+
+    def money(z: Array) -> Array:
+        return (
+            np.log(f1)
+            + r * a * z
+            - 0.5 * (r * a) ** 2
+            - np.log(np.maximum(k + f2 * np.exp(b * z - 0.5 * b * b), 1e-300))
+        )
+
+    grid = np.linspace(low, high, 4001)
+    level = money(grid)
+    centres = list(grid[:-1][np.sign(level[:-1]) != np.sign(level[1:])])
+    inner = (level[1:-1] >= level[:-2]) & (level[1:-1] >= level[2:]) | (level[1:-1] <= level[:-2]) & (
+        level[1:-1] <= level[2:]
+    )
+    centres += list(grid[1:-1][inner][:4])
+    ends = [np.arange(low, high, 0.5), [high]]
+    if k < 0.0:
+        # Where the amount paid passes through zero the integrand is smooth but not analytic: it wants ever finer
+        # panels.
+        nothing, fine = (np.log(-k / f2) + 0.5 * b * b) / b, 1e-10 * 2.0 ** np.arange(38)
+        ends += [[nothing], nothing + fine, nothing - fine]
+    for centre in centres:
+        left, right = centre - (grid[1] - grid[0]), centre + (grid[1] - grid[0])
+        if money(np.array([left]))[0] * money(np.array([right]))[0] < 0.0:
+            for _ in range(50):
+                middle = 0.5 * (left + right)
+                same = money(np.array([left]))[0] * money(np.array([middle]))[0] > 0.0
+                left, right = (middle, right) if same else (left, middle)
+            centre = 0.5 * (left + right)
+        received = f2 * np.exp(b * centre - 0.5 * b * b)
+        steepness = max(abs(r * a - b * received / max(k + received, 1e-300)), abs(r) * a + b)
+        width = max(a * np.sqrt(1.0 - r * r) / steepness, 1e-9) / 16.0
+        steps = width * 2.0 ** np.arange(np.ceil(np.log2(20.0 / width)))
+        ends += [[centre], centre + steps, centre - steps]
+    together = np.unique(np.concatenate(ends))
+    return together[(together >= low) & (together <= high)]
+
+
+def integrated(f1: float, f2: float, k: float, a: float, b: float, r: float) -> tuple[float, float]:
+    """Value and long delta of the undiscounted call."""
+    ends = panel_ends(f1, f2, k, a, b, r)
+    half = 0.5 * np.diff(ends)
+    z = (0.5 * (ends[1:] + ends[:-1])[:, None] + half[:, None] * NODES).ravel()
+    weight = (half[:, None] * WEIGHTS).ravel() * np.exp(-0.5 * z * z) / np.sqrt(2.0 * np.pi)
+    lift = np.exp(r * a * z - 0.5 * (r * a) ** 2)
+    paid = k + f2 * np.exp(b * z - 0.5 * b * b)
+    own = a * np.sqrt((1.0 - r) * (1.0 + r))
+    with np.errstate(all="ignore"):
+        upper = np.where(paid > 0.0, np.log(f1 * lift / paid) / own + 0.5 * own, np.inf)
+    exercised, repaid = ndtr(upper), ndtr(upper - own)
+    return float(np.sum(weight * (f1 * lift * exercised - paid * repaid))), float(np.sum(weight * lift * exercised))
+
+
+def error_of_the_integration() -> float:
+    """Worst error against integrated.csv, in units of 1e-10 of the value plus 1e-12 of the larger forward."""
+    with REFERENCE.open(newline="", encoding="utf-8") as table:
+        rows = list(csv.DictReader(table))
+    worst = 0.0
+    for row in rows:
+        f1, f2, k, s1, s2, r, t = (float(row[name]) for name in ("F1", "F2", "K", "sigma1", "sigma2", "rho", "T"))
+        found, _ = integrated(f1, f2, k, s1 * t**0.5, s2 * t**0.5, r)
+        exact = float(row["exact"])
+        worst = max(worst, abs(found - exact) / (1e-10 * exact + 1e-12 * max(f1, f2)))
+    return worst
+
+
+def quantiles(errors: Array) -> str:
+    median, high, worst = np.quantile(errors, (0.5, 0.99, 1.0))
+    return f"median {median:8.1e}   99th percentile {high:8.1e}   worst {worst:8.1e}"
+
+
+def yardstick_figures(name: str, options: Options) -> None:
+    exact = np.array([integrated(*map(float, row)) for row in zip(*options, strict=True)])
+    found = yardstick.sensitivities(*options, 1.0)
+    _, bound = yardstick.estimate(*options, 1.0)
+    larger = np.maximum(options.forward_long, options.forward_short)
+    gap = np.abs(found.value - exact[:, 0])
+    print(f"Yardstick, {name}, {gap.size} options against the conditional integration")
+    print("  |error| / max(value, larger forward / 100)", quantiles(gap / np.maximum(exact[:, 0], 0.01 * larger)))
+    print("  |error| / (1e-10 value + 1e-12 larger)    ", quantiles(gap / (1e-10 * exact[:, 0] + 1e-12 * larger)))
+    print("  |error of the long delta|                 ", quantiles(np.abs(found.delta_long - exact[:, 1])))
+    print("  own error bound / larger forward          ", quantiles(bound / larger))
+    # The comparison integral has rounding of its own, some 1e-14 of the forwards it adds up.
+    print(
+        "  options with error above their own bound  ",
+        int(np.sum(gap > bound + 2e-14 * (larger + np.abs(options.strike)))),
+    )
+
+
+def closed_form_figures(options: Options) -> None:
+    exact = yardstick.value(*options, 1.0)
+    print(f"Closed forms, ordinary box, {exact.size} options against the Yardstick: |error| / short forward")
+    for method in methods.METHODS:
+        if method.reference or not method.accepts(1.0):
+            continue
+        for sign, label in ((1.0, "strike above zero"), (-1.0, "strike below zero")):
+            chosen = np.sign(options.strike) == sign
+            picked = Options(*(column[chosen] for column in options))
+            gap = np.abs(method.value(*picked, 1.0) - exact[chosen]) / picked.forward_short
+            print(f"  {method.name:22}{label:20}", quantiles(gap))
+            if sign < 0.0:
+                published = (
+                    np.abs(method.value(*picked, 1.0, role_exchange=False) - exact[chosen]) / picked.forward_short
+                )
+                print(f"  {'':22}{'  published form':20}", quantiles(published))
+
+
+def main() -> None:
+    count = int(sys.argv[1]) if len(sys.argv) > 1 else 10_000
+    draw = np.random.default_rng(20_260_101)
+    print(f"Conditional integration against integrated.csv: worst {error_of_the_integration():.1e} of the tolerance")
+    yardstick_figures("hard box", hard_box(draw, count))
+    yardstick_figures("ordinary box", ordinary_box(draw, count // 4))
+    closed_form_figures(ordinary_box(draw, 200_000))
+
+
+if __name__ == "__main__":
+    main()
