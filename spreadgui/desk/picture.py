@@ -20,8 +20,9 @@ def draw_window(book: Book, path: Path, width: int, height: int, *, dark: bool =
     assert isinstance(app, QApplication)
     theme = theme_for(app, dark=dark)
     apply(app, theme)
-    window = Window(book, path, theme)
+    window = Window(theme)
     try:
+        window.assemble(book, path)
         window.resize(width, height)
         window.show()
         window.complete()

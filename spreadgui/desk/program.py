@@ -25,10 +25,10 @@ def run_window(path: Path, *, demo: bool) -> int:
     app = start_application()
     theme = theme_for(app)
     apply(app, theme)
-    window = Window(book, None if demo or is_positions_list(path) else path, theme)
+    window = Window(theme)
     sys.excepthook = lambda _kind, error, _trace: _stumble(window, error)
     window.show()
-    window.complete_soon()
+    window.open_after_paint(book, None if demo or is_positions_list(path) else path)
     return app.exec()
 
 
@@ -45,6 +45,9 @@ def start_application() -> QApplication:
 def _stumble(window: Window, error: BaseException) -> None:
     """A fault of the program in the middle of an act: say so where the user looks; the book is as it was before it."""
     details = "".join(traceback.format_exception(error))
+    if not hasattr(window, "message"):  # it is still coming up: there is nothing to keep
+        sys.stderr.write(f"spreadgui: the window could not be opened: {type(error).__name__}: {error}\n")
+        os._exit(3)
     window.message.say(
         f"A fault of this program, not of your input: {type(error).__name__}: {error}. The book is as it was.", details
     )

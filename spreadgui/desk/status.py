@@ -12,7 +12,6 @@ from spreadgui.desk.jobs import Finished
 from spreadgui.desk.workbench import Workbench
 from spreadgui.valuation.results import LiveResults, State
 from spreadgui.valuation.shown import number_text
-from spreadgui.valuation.table import total_value
 
 _SHOWN_MILLISECONDS = 6000
 _DOT = "   ·   "
@@ -55,7 +54,7 @@ class StatusLine(QStatusBar):
 
     def _words(self) -> Iterator[str]:
         results, book = self._workbench.results, self._workbench.book
-        yield f"Book value {number_text(total_value(results), 0)} {book.currency}".rstrip()
+        yield f"Book value {number_text(results.total_value(), 0)} {book.currency}".rstrip()
         yield state_words(results)
         if self._seconds:
             yield f"priced in {number_text(1000 * self._seconds, 0)} ms"

@@ -6,26 +6,23 @@ from collections.abc import Callable
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from PySide6.QtCore import Qt, QTimer, Slot
+from PySide6.QtCore import QEvent, QObject, Qt, QTimer, Slot
 from PySide6.QtGui import QAction, QCloseEvent
-from PySide6.QtWidgets import QApplication, QMainWindow, QMenu, QSplitter, QToolBar, QVBoxLayout, QWidget
+from PySide6.QtWidgets import QApplication, QLabel, QMainWindow, QMenu, QSplitter, QToolBar, QVBoxLayout, QWidget
 
-from spreadgui.book.records import Book
-from spreadgui.desk import cautions
 from spreadgui.desk.acts import ACTS, MENUS, Act
-from spreadgui.desk.bookbar import BookBar
-from spreadgui.desk.files import BookFiles
-from spreadgui.desk.grid.pane import PositionsPane
-from spreadgui.desk.look.icons import icon, renew_icons, set_icon
-from spreadgui.desk.look.pane import Pane
-from spreadgui.desk.look.theme import Theme, apply
-from spreadgui.desk.message import MessageStrip
-from spreadgui.desk.panels.reading import ReadingPane
-from spreadgui.desk.status import StatusLine
-from spreadgui.desk.workbench import Workbench
+from spreadgui.desk.look.theme import Theme, apply, set_tone
 
 if TYPE_CHECKING:
+    from spreadgui.book.records import Book
+    from spreadgui.desk.bookbar import BookBar
+    from spreadgui.desk.files import BookFiles
+    from spreadgui.desk.grid.pane import PositionsPane
     from spreadgui.desk.landscape.pane import LandscapePane
+    from spreadgui.desk.message import MessageStrip
+    from spreadgui.desk.panels.reading import ReadingPane
+    from spreadgui.desk.status import StatusLine
+    from spreadgui.desk.workbench import Workbench
 
 NO_ROW = "Choose a position in the grid."
 READING_HEIGHT = 350
@@ -33,34 +30,75 @@ LATE_MILLISECONDS = 120
 
 
 class Window(QMainWindow):
-    """The program's window on one book. Close it (or call `shut`) before it dies: the pricing thread ends there."""
+    """The program's window. Close it (or call `shut`) before it dies: the pricing thread ends there.
 
-    def __init__(self, book: Book, path: Path | None, theme: Theme) -> None:
+    It comes up in three steps, each painted before the next loads what it needs: the bare window (Qt alone), the panes
+    on a book (`assemble`), the Landscape and the first numbers (`complete`; pyqtgraph, and SciPy on its thread).
+    """
+
+    workbench: Workbench
+    files: BookFiles
+    positions: PositionsPane
+    reading: ReadingPane
+    message: MessageStrip
+    bar: BookBar
+    status: StatusLine
+
+    def __init__(self, theme: Theme) -> None:
         super().__init__()
         self.theme = theme
+        self.landscape: LandscapePane | None = None
+        self.actions_by_id: dict[str, QAction] = {}
+        self.handlers: dict[str, Callable[[], object]] = {}
+        self._opening = QLabel("Opening the book…")
+        self._opening.setAlignment(Qt.AlignmentFlag.AlignCenter)
+        set_tone(self._opening, "muted")
+        self.setCentralWidget(self._opening)
+        self.setWindowTitle("spreadgui")
+        self.resize(1600, 1000)
+
+    def open_after_paint(self, book: Book, path: Path | None) -> None:
+        """`assemble` once the bare window has been painted, and `complete` once the panes have."""
+
+        def assemble() -> None:
+            self.assemble(book, path)
+            _AfterPaint(self.positions.view.viewport(), self.complete)
+
+        _AfterPaint(self._opening, assemble)
+
+    def assemble(self, book: Book, path: Path | None) -> None:
+        """Put the panes on `book`; `path` is the file that saving writes to, None where there is none yet."""
+        from spreadgui.desk.bookbar import BookBar
+        from spreadgui.desk.files import BookFiles
+        from spreadgui.desk.grid.pane import PositionsPane
+        from spreadgui.desk.look.pane import Pane
+        from spreadgui.desk.message import MessageStrip
+        from spreadgui.desk.panels.reading import ReadingPane
+        from spreadgui.desk.status import StatusLine
+        from spreadgui.desk.workbench import Workbench
+
         self.workbench = Workbench(book, self)
         self.files = BookFiles(self.workbench, self)
         self.files.path = path
-        self.positions = PositionsPane(self.workbench, theme)
-        self.reading = ReadingPane(theme)
-        # The Landscape loads pyqtgraph, which takes as long as all else: it comes after the first paint (`complete`).
+        self.positions = PositionsPane(self.workbench, self.theme)
+        self.reading = ReadingPane(self.theme)
         self._vacant = Pane("Landscape")
-        self.landscape: LandscapePane | None = None
         self.message = MessageStrip()
         self.bar = BookBar(self.workbench)
         self.status = StatusLine(self.workbench, self)
         # An answer that comes at once must not make the panes flicker.
         self._late = QTimer(self, singleShot=True, interval=LATE_MILLISECONDS)
         self._late.timeout.connect(self._fade)
-        self.actions_by_id: dict[str, QAction] = {}
         self.handlers = self._handlers()
-        self._assemble()
+        self._lay_out()
         self._join()
         self._refresh_title()
 
     # --- assembly
 
-    def _assemble(self) -> None:
+    def _lay_out(self) -> None:
+        from spreadgui.desk.look.icons import icon
+
         self.setWindowIcon(icon("app", self.theme))
         self._make_acts()
         self._right = QSplitter(Qt.Orientation.Vertical)
@@ -86,7 +124,6 @@ class Window(QMainWindow):
         column.addWidget(self._across, 1)
         self.setCentralWidget(body)
         self.setStatusBar(self.status)
-        self.resize(1600, 1000)
 
     def _make_acts(self) -> None:
         bar = QToolBar("Acts")
@@ -110,6 +147,8 @@ class Window(QMainWindow):
                 self._recent.aboutToShow.connect(self._fill_recent)
 
     def _make_act(self, act: Act) -> QAction:
+        from spreadgui.desk.look.icons import set_icon
+
         action = QAction(act.words, self)
         action.setShortcut(act.keys)
         action.setToolTip(f"{act.help}  {act.keys}".strip())
@@ -122,6 +161,8 @@ class Window(QMainWindow):
 
     def _handlers(self) -> dict[str, Callable[[], object]]:
         """Who carries out each act of the acts table."""
+        from spreadgui.desk import cautions
+
         return {
             "new": self.files.new,
             "open": self.files.choose,
@@ -159,7 +200,7 @@ class Window(QMainWindow):
         self._look_at(-1)
 
     def complete(self) -> None:
-        """Bring in the Landscape, and look at the first position."""
+        """Bring in the Landscape, begin to price, and look at the first position."""
         from spreadgui.desk.landscape.pane import LandscapePane
 
         if self.landscape is not None:
@@ -174,6 +215,7 @@ class Window(QMainWindow):
         if self.positions.view.current_row() < 0:
             self.positions.view.go_to(0, 0)
         self.positions.view.setFocus()
+        self.workbench.begin()
         self._ask_again()
 
     def _share_height(self) -> None:
@@ -262,6 +304,8 @@ class Window(QMainWindow):
 
     def switch_look(self) -> None:
         """The other look, light or dark."""
+        from spreadgui.desk.look.icons import renew_icons
+
         self.theme = self.theme.switched()
         app = QApplication.instance()
         assert isinstance(app, QApplication)
@@ -271,17 +315,29 @@ class Window(QMainWindow):
             if pane is not None:
                 pane.set_theme(self.theme)
 
-    def complete_soon(self) -> None:
-        """`complete` once the window has been painted."""
-        QTimer.singleShot(0, self.complete)
-
     def closeEvent(self, event: QCloseEvent) -> None:
-        if not self.files.may_leave():
+        if hasattr(self, "files") and not self.files.may_leave():
             event.ignore()
             return
         self.shut()
         event.accept()
 
     def shut(self) -> None:
-        """End the pricing thread."""
-        self.workbench.close()
+        """End the pricing thread, where it has begun."""
+        if hasattr(self, "workbench"):
+            self.workbench.close()
+
+
+class _AfterPaint(QObject):
+    """Calls `act` once, when `widget` has been painted for the first time."""
+
+    def __init__(self, widget: QWidget, act: Callable[[], object]) -> None:
+        super().__init__(widget)
+        self._act = act
+        widget.installEventFilter(self)
+
+    def eventFilter(self, watched: QObject, event: QEvent) -> bool:
+        if event.type() == QEvent.Type.Paint:
+            watched.removeEventFilter(self)
+            QTimer.singleShot(0, self._act)
+        return False

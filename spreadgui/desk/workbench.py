@@ -55,6 +55,11 @@ class Workbench(QObject):
         self.results = LiveResults()
         self.results.follow(first)
         self._session.subscribe(self._on_session)
+        self._begun = False
+
+    def begin(self) -> None:
+        """Price from now on; until then the window is still coming up and must not share its processor."""
+        self._begun = True
         self._ask.start()
 
     # --- the book
@@ -150,6 +155,8 @@ class Workbench(QObject):
 
     @Slot()
     def _submit(self) -> None:
+        if not self._begun:
+            return
         pending = self.results.pending()
         in_sight = (pending >= self._sight.start) & (pending < self._sight.stop)
         focus = self._focus if self._focus_due else None

@@ -1,8 +1,16 @@
 """Published methods for options on the spread of two forwards: arrays in, arrays out, NumPy and SciPy only.
 
-Every method module has `value` and `sensitivities` of the same arguments; `methods` declares them all.
+Every method module has `value` and `sensitivities` of the same arguments; `methods` declares them all. A module is
+loaded when it is first named: SciPy takes longer to load than a window to be painted, and that needs only the table.
 """
 
-from spreadgui.pricing import bjerksund_stensland, black76, kirk, margrabe, modified_kirk, yardstick
+from importlib import import_module
+from types import ModuleType
 
 __all__ = ["bjerksund_stensland", "black76", "kirk", "margrabe", "modified_kirk", "yardstick"]
+
+
+def __getattr__(name: str) -> ModuleType:
+    if name in __all__:
+        return import_module(f"{__name__}.{name}")
+    raise AttributeError(f"module {__name__!r} has no attribute {name!r}")

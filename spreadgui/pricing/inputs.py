@@ -17,6 +17,7 @@ KINDS = ("call", "put", "forward")
 CHUNK = 65536
 # Outside these the squares and cubes in second derivatives would run over or under; no market comes near them.
 LARGEST_AMOUNT = 1e60
+SMALLEST_FORWARD = 1e-60
 LARGEST_RATE = 1e6
 
 
@@ -88,9 +89,9 @@ def check_positive(name: str, column: Array) -> None:
     low, high = _check_finite(name, column)
     if low <= 0.0:
         _refuse(name, column, column <= 0.0, "above zero")
-    if low < 1.0 / LARGEST_AMOUNT or high > LARGEST_AMOUNT:
-        outside = (column < 1.0 / LARGEST_AMOUNT) | (column > LARGEST_AMOUNT)
-        _refuse(name, column, outside, f"between {1.0 / LARGEST_AMOUNT:g} and {LARGEST_AMOUNT:g}")
+    if low < SMALLEST_FORWARD or high > LARGEST_AMOUNT:
+        outside = (column < SMALLEST_FORWARD) | (column > LARGEST_AMOUNT)
+        _refuse(name, column, outside, f"between {SMALLEST_FORWARD:g} and {LARGEST_AMOUNT:g}")
 
 
 def check_not_negative(name: str, column: Array) -> None:
@@ -102,6 +103,12 @@ def check_not_negative(name: str, column: Array) -> None:
         _refuse(name, column, column < 0.0, "zero or above")
     if high > LARGEST_RATE:
         _refuse(name, column, column > LARGEST_RATE, f"at most {LARGEST_RATE:g}")
+
+
+def check_finite(name: str, column: Array) -> None:
+    """Refuse NaN and infinite entries."""
+    if column.size:
+        _check_finite(name, column)
 
 
 def check_strike(name: str, column: Array) -> None:

@@ -6,12 +6,15 @@ Columns, panels, the command line and the tests loop over `METHODS`; a new metho
 from __future__ import annotations
 
 from collections.abc import Callable
+from concurrent.futures import Executor
 from dataclasses import dataclass
+from importlib import import_module
+from types import ModuleType
+from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from spreadgui.pricing import bjerksund_stensland, kirk, margrabe, modified_kirk, yardstick
 from spreadgui.pricing.inputs import Array
 from spreadgui.pricing.results import Sensitivities
 
@@ -30,16 +33,28 @@ def strike_of_zero(strike: ArrayLike) -> NDArray[np.bool_]:
 
 @dataclass(frozen=True)
 class Method:
-    """One published method. `value` and `sensitivities` take the arguments all spread methods share."""
+    """One published method; its formulas are in the module of this room that has its key for a name."""
 
     key: str
     name: str
     source: str
     applies: str
-    value: Callable[..., Array]
-    sensitivities: Callable[..., Sensitivities]
     accepts: Accepts = any_strike
     reference: bool = False
+
+    def value(self, *arguments: ArrayLike, executor: Executor | None = None, **named: Any) -> Array:
+        """The discounted value; arguments, by place or by name, are those of the method's own `value`."""
+        found: Array = self._module().value(*arguments, executor=executor, **named)
+        return found
+
+    def sensitivities(self, *arguments: ArrayLike, executor: Executor | None = None, **named: Any) -> Sensitivities:
+        """The discounted value and its derivatives; arguments as for `value`."""
+        found: Sensitivities = self._module().sensitivities(*arguments, executor=executor, **named)
+        return found
+
+    def _module(self) -> ModuleType:
+        # Loaded when first used, so that whoever only needs names and sources does not wait for SciPy.
+        return import_module(f"spreadgui.pricing.{self.key}")
 
 
 METHODS: tuple[Method, ...] = (
@@ -48,8 +63,6 @@ METHODS: tuple[Method, ...] = (
         name="Margrabe",
         source="W. Margrabe, Journal of Finance 33 (1978) 177-186",
         applies="Exact for a strike of zero, and only there.",
-        value=margrabe.value,
-        sensitivities=margrabe.sensitivities,
         accepts=strike_of_zero,
     ),
     Method(
@@ -57,32 +70,24 @@ METHODS: tuple[Method, ...] = (
         name="Kirk",
         source="E. Kirk, in Managing Energy Price Risk (Risk Publications, 1995)",
         applies="Approximate; best for strikes that are small beside the short forward.",
-        value=kirk.value,
-        sensitivities=kirk.sensitivities,
     ),
     Method(
         key="modified_kirk",
         name="modified Kirk",
         source="E. Alòs and J. A. León, Quantitative Finance 16 (2016) 31-42",
         applies="Kirk with the volatility corrected for its slope in moneyness; best near the money.",
-        value=modified_kirk.value,
-        sensitivities=modified_kirk.sensitivities,
     ),
     Method(
         key="bjerksund_stensland",
         name="Bjerksund-Stensland",
         source="P. Bjerksund and G. Stensland, Quantitative Finance 14 (2014) 1785-1794",
         applies="Approximate from below; the closest of the closed forms over most of the range.",
-        value=bjerksund_stensland.value,
-        sensitivities=bjerksund_stensland.sensitivities,
     ),
     Method(
         key="yardstick",
         name="Yardstick",
         source="Numerical integration along the exercise boundary; derived in spreadgui.pricing.boundary",
         applies="The reference value under two lognormal forwards, for every strike.",
-        value=yardstick.value,
-        sensitivities=yardstick.sensitivities,
         reference=True,
     ),
 )

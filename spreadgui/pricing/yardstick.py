@@ -1,10 +1,10 @@
 """The Yardstick: the value of a spread option on two lognormal forwards, by integration along the exercise boundary.
 
-`boundary` lays the geometry, `hermite`, `trapezoid` and `panels` are three ways to walk it, `one_factor` is the case where
-the plane collapses to a line, and `engine` chooses. Here exercise masses become values and derivatives. The deltas are
-the masses themselves. The second derivatives are integrals over the boundary of the density there, and the rest follows
-from them, because the density of ln S1, ln S2 spreads by the heat equation: with a, b the deviations and rho the
-correlation,
+`boundary` lays the geometry, `hermite`, `trapezoid` and `panels` are three ways to walk it, `one_factor` is the case
+where the plane collapses to a line, and `engine` chooses. Here exercise masses become values and derivatives. The
+deltas are the masses themselves. The second derivatives are integrals over the boundary of the density there, and the
+rest follows from them, because the density of ln S1, ln S2 spreads by the heat equation: with a, b the deviations and
+rho the correlation,
 
     dV/da = a F1^2 gamma_long + rho b F1 F2 gamma_cross,      dV/drho = a b F1 F2 gamma_cross,
 

@@ -7,12 +7,12 @@ from concurrent.futures import Executor
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from spreadgui.market.contracts import Shape
 from spreadgui.pricing import black76
 from spreadgui.pricing.methods import METHODS, Method
 from spreadgui.pricing.methods import method as method_of
+from spreadgui.valuation.reach import within_reach
 from spreadgui.valuation.results import OUTPUTS, SENSITIVITIES, Part, output_row
 from spreadgui.valuation.slate import INPUTS, KINDS, FloatArray, RowArray, Slate
 
@@ -55,7 +55,7 @@ def price_rows(slate: Slate, rows: RowArray, executor: Executor | None = None) -
     outputs = np.full((len(OUTPUTS), len(rows)), np.nan)
     inputs = slate.inputs[:, rows]
     kinds, shapes = slate.kind[rows], slate.shape[rows]
-    reachable = _reachable(inputs)
+    reachable = within_reach(dict(zip(INPUTS, inputs, strict=True)), kinds == KINDS.index("forward"))
     for code, kind in enumerate(KINDS):
         for shape in Shape:
             members = np.flatnonzero((kinds == code) & (shapes == shape) & reachable)
@@ -67,20 +67,6 @@ def price_rows(slate: Slate, rows: RowArray, executor: Executor | None = None) -
     for array in (outputs, rows):
         array.setflags(write=False)
     return Part(slate.revision, rows, outputs, refused)
-
-
-def _reachable(inputs: FloatArray) -> NDArray[np.bool_]:
-    """Which rows stay within floating point once the ratios are folded in; a row that does not stops no other."""
-    columns = dict(zip(INPUTS, inputs, strict=True))
-    reachable = np.ones(inputs.shape[1], dtype=np.bool_)
-    with np.errstate(over="ignore", under="ignore"):
-        for side in ("long", "short"):
-            forward, ratio = columns[f"forward_{side}"], columns[f"ratio_{side}"]
-            folded = forward * ratio
-            reachable &= np.isnan(forward) | (
-                np.isfinite(folded) & (ratio**2 < np.inf) & ((folded > 0) == (forward > 0))
-            )
-    return reachable
 
 
 def _price_group(group: _Group, chosen: Method, executor: Executor | None) -> FloatArray:

@@ -127,6 +127,13 @@ class LiveResults:
         column: FloatArray = self.outputs[_OUTPUT_ROW[key]]
         return column
 
+    def total_value(self) -> float:
+        """The sum of the position values of all current rows, in the book's currency."""
+        if self.slate is None:
+            return 0.0
+        values = self.slate.values("quantity") * self.values("value")
+        return float(values[self.state == State.CURRENT].sum())
+
     def reason(self, row: int) -> str:
         """Why a row is incomplete or refused, as one sentence; empty for the others."""
         return self.reasons.get(row, "")

@@ -9,6 +9,7 @@ import numpy as np
 
 from spreadgui.market.contracts import Readiness, Shape
 from spreadgui.pricing.methods import method as method_of
+from spreadgui.valuation.reach import within_reach
 from spreadgui.valuation.slate import KINDS, FloatArray, Slate
 
 
@@ -117,7 +118,9 @@ def draw_surface(slate: Slate, request: SurfaceRequest, executor: Executor | Non
     kind = KINDS[slate.kind[request.row]]
     long = _axis(cell["forward_long"], cell["vol_long"], cell["years"], request.nodes)
     short = _axis(cell["forward_short"], cell["vol_short"], cell["years"], request.nodes)
-    if not (_usable(long, cell["ratio_long"], kind) and _usable(short, cell["ratio_short"], kind)):
+    ends = {"forward_long": long[[0, -1]], "forward_short": short[[0, -1]]}
+    in_reach = within_reach({**cell, **ends}, kind == "forward").all()
+    if not (in_reach and _usable(long, cell["ratio_long"], kind) and _usable(short, cell["ratio_short"], kind)):
         return _blank(slate, request, _OUT_OF_REACH)
     values = _nodes(cell, kind, request, long[np.newaxis, :], short[:, np.newaxis], slate.book.zero_rate, executor)
     here = np.array([[cell["forward_long"]]]), np.array([[cell["forward_short"]]])
@@ -259,7 +262,7 @@ def _option_nodes(
     """By the method, in code units, to the forwards with their ratios folded in."""
     method, key = method_of(request.method), request.quantity
     rest = (cell[name] for name in ("strike", "vol_long", "vol_short", "correlation", "years", "discount"))
-    arguments = (long, short, *rest)
+    arguments: tuple[FloatArray | float, ...] = (long, short, *rest)
     if key == "value":
         return np.asarray(method.value(*arguments, kind=kind, executor=executor))
     found = method.sensitivities(*arguments, kind=kind, executor=executor)

@@ -37,13 +37,6 @@ def value_book(book: Book, executor: Executor | None = None) -> ValuedBook:
     return ValuedBook(succession.slate, results)
 
 
-def total_value(results: LiveResults) -> float:
-    """The sum of the position values of all current rows, in the book's currency."""
-    assert results.slate is not None
-    values = results.slate.values("quantity") * results.values("value")
-    return float(values[results.state == State.CURRENT].sum())
-
-
 def csv_text(valued: ValuedBook) -> str:
     """The value table: a header of column keys, one line a position, numbers in code units to the last digit."""
     stream = io.StringIO()
@@ -64,7 +57,7 @@ def json_text(valued: ValuedBook) -> str:
         "currency": book.currency,
         "valuation_date": book.valuation_date.isoformat(),
         "method": book.method,
-        "book_value": total_value(valued.results),
+        "book_value": valued.results.total_value(),
     }
     positions = [{key: cells[key][row] for key in VALUE_TABLE} for row in range(len(valued.slate))]
     return json.dumps({**head, "positions": positions}, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
@@ -77,7 +70,8 @@ def summary_text(valued: ValuedBook) -> str:
     lines += _aligned(list(_summary_rows(valued)))
     states = [State(int(code)).word for code in valued.results.state]
     counts = ", ".join(f"{states.count(word)} {word}" for word in dict.fromkeys(states))
-    lines += ["", f"Book value {number_text(total_value(valued.results), 0)} {book.currency}".rstrip() + f" ({counts})"]
+    total = f"Book value {number_text(valued.results.total_value(), 0)} {book.currency}".rstrip()
+    lines += ["", f"{total} ({counts})"]
     return "\n".join(lines)
 
 

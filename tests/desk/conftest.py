@@ -58,7 +58,8 @@ class Desk:
 
     def open(self, book: Book, path: Path | None = None) -> Window:
         """A complete window on `book`, shown, active, every number in it current."""
-        window = Window(book, path, self._theme)
+        window = Window(self._theme)
+        window.assemble(book, path)
         self._windows.append(window)
         window.resize(1600, 1000)
         window.show()

@@ -170,3 +170,8 @@ def test_arrays_are_read_only_finite_and_rise_along_the_axes() -> None:
 def test_an_unknown_quantity_is_a_key_error() -> None:
     with pytest.raises(KeyError):
         quantity_of("colour")
+
+
+def test_forwards_beyond_the_reach_of_the_formulas_give_a_reason() -> None:
+    slate = build_slate(book_of(spark(own_forward_long=1e200, own_forward_short=1e199)), 1)
+    assert "reach" in draw_surface(slate, SurfaceRequest(0)).reason

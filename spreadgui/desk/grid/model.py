@@ -99,6 +99,10 @@ class GridModel(QAbstractTableModel):
         """The cell's text and look, in one call."""
         return self._cells.cell(index.row(), index.column())
 
+    def text(self, row: int, place: int) -> str:
+        """What a cell shows."""
+        return self._cells.cell(row, place).text
+
     def column(self, key: str) -> int:
         """Where the column of that key stands; KeyError where it is not on the screen."""
         return self._place[key]

@@ -16,7 +16,7 @@ from spreadgui.desk.look.theme import Theme
 from spreadgui.desk.workbench import Workbench
 
 _NARROWEST, _WIDEST = 48, 210
-_SAMPLED_ROWS = 200
+_SAMPLED_ROWS = 64
 _HORIZONTAL = Qt.Orientation.Horizontal
 # Computed columns are empty when the widths are set; this is room for the numbers to come.
 _LEAST = {"position_value": 96}
@@ -113,8 +113,8 @@ class PositionsPane(Pane):
         rows = min(self.model.rowCount(), _SAMPLED_ROWS)
         for place in range(self.model.columnCount()):
             heading = str(self.model.headerData(place, _HORIZONTAL))
-            texts = [*heading.split("\n"), *(self.model.cell(self.model.index(row, place)).text for row in range(rows))]
-            width = max(metrics.horizontalAdvance(text) for text in texts) + _PADDING
+            longest = max((self.model.text(row, place) for row in range(rows)), key=len, default="")
+            width = max(metrics.horizontalAdvance(text) for text in (*heading.split("\n"), longest)) + _PADDING
             column = self.model.columns[place]
             least = _LEAST.get(column.key, _LEAST_COMPUTED if column.computed else _NARROWEST)
             self.view.setColumnWidth(place, max(least, min(width, _WIDEST)))

@@ -18,8 +18,9 @@ from PySide6.QtGui import QColor, QPainter, QPen
 from spreadgui.desk.landscape.frame import Frame
 from spreadgui.desk.landscape.isolines import Isoline, isolines, joined
 from spreadgui.desk.landscape.levels import Levels
+from spreadgui.desk.look.ramps import Bytes, diverging, sequential
 from spreadgui.desk.look.theme import Theme
-from spreadgui.desk.look.tokens import Bytes, Palette, contrast, diverging, sequential
+from spreadgui.desk.look.tokens import Palette, contrast
 from spreadgui.valuation.surface import Surface
 
 FloatArray = NDArray[np.float64]

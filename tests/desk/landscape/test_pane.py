@@ -346,7 +346,7 @@ def test_a_flat_surface_says_so(pane: LandscapePane, draw: Draw, position: objec
         spark(own_vol_long=0.0, own_vol_short=0.0),
         spark(own_forward_long=1.1e9, own_forward_short=1.5e8, strike=1e7),
         spark(own_forward_long=1.1e-9, own_forward_short=1.5e-10, strike=0.0),
-        spark(own_forward_long=1e200, own_forward_short=1e199),
+        spark(own_forward_long=1e45, own_forward_short=1e44),
         spark(own_vol_long=9.0, own_correlation=-1.0),
         spark(strike=-4000.0),
         spark(kind="forward", own_forward_long=-20.0, own_forward_short=0.0),

@@ -7,7 +7,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from spreadgui.desk.look import tokens
+from spreadgui.desk.look import ramps, tokens
 from spreadgui.desk.look.tokens import DARK, LIGHT, MARK_PAIRS, TEXT_PAIRS, Palette
 
 PALETTES = pytest.mark.parametrize("palette", [LIGHT, DARK], ids=lambda palette: palette.name)
@@ -65,7 +65,7 @@ def test_a_palette_cannot_be_changed() -> None:
 @PALETTES
 @pytest.mark.parametrize("count", [2, 3, 33, 256, 512])
 def test_the_sequential_ramp_goes_from_the_ground_to_deep_kelp_in_one_direction(palette: Palette, count: int) -> None:
-    rows = tokens.sequential(palette, count)
+    rows = ramps.sequential(palette, count)
     assert rows.shape == (count, 3)
     assert rows.dtype == np.uint8
     assert tuple(rows[0]) == tokens.rgb(palette.panel)
@@ -76,14 +76,14 @@ def test_the_sequential_ramp_goes_from_the_ground_to_deep_kelp_in_one_direction(
 
 @PALETTES
 def test_equal_steps_of_a_ramp_look_equal(palette: Palette) -> None:
-    steps = np.abs(np.diff(_lightness(tokens.sequential(palette, 16))))
+    steps = np.abs(np.diff(_lightness(ramps.sequential(palette, 16))))
     assert steps.max() < 1.2 * steps.min()
 
 
 @PALETTES
 @pytest.mark.parametrize("count", [3, 65, 257])
 def test_the_diverging_ramp_has_the_ground_at_zero_and_two_arms_of_one_weight(palette: Palette, count: int) -> None:
-    rows = tokens.diverging(palette, count)
+    rows = ramps.diverging(palette, count)
     assert rows.shape == (count, 3)
     assert tuple(rows[count // 2]) == tokens.rgb(palette.panel)
     assert tuple(rows[-1]) == tokens.rgb(palette.deep_kelp)
@@ -97,7 +97,7 @@ def test_the_diverging_ramp_has_the_ground_at_zero_and_two_arms_of_one_weight(pa
 
 @PALETTES
 def test_the_arms_of_the_diverging_ramp_are_brick_and_kelp(palette: Palette) -> None:
-    rows = tokens.diverging(palette, 65).astype(int)
+    rows = ramps.diverging(palette, 65).astype(int)
     below, above = rows[16], rows[48]
     assert below[0] > below[1] + 20
     assert above[1] > above[0] + 20
@@ -106,19 +106,19 @@ def test_the_arms_of_the_diverging_ramp_are_brick_and_kelp(palette: Palette) -> 
 @pytest.mark.parametrize("count", [-1, 0, 1])
 def test_a_sequential_ramp_needs_two_rows(count: int) -> None:
     with pytest.raises(ValueError, match="count"):
-        tokens.sequential(LIGHT, count)
+        ramps.sequential(LIGHT, count)
 
 
 @pytest.mark.parametrize("count", [0, 1, 2, 256])
 def test_a_diverging_ramp_needs_a_row_for_zero(count: int) -> None:
     with pytest.raises(ValueError, match="count"):
-        tokens.diverging(LIGHT, count)
+        ramps.diverging(LIGHT, count)
 
 
 def test_lightness_agrees_with_published_values() -> None:
     # L* of the sRGB primaries, D65: 53.24, 87.73, 32.30 (Lindbloom's colour calculator; from memory).
     rows = np.array([[255, 0, 0], [0, 255, 0], [0, 0, 255], [255, 255, 255], [0, 0, 0]], dtype=np.uint8)
-    np.testing.assert_allclose(tokens.lightness(rows), [53.24, 87.73, 32.30, 100, 0], atol=0.02)
+    np.testing.assert_allclose(ramps.lightness(rows), [53.24, 87.73, 32.30, 100, 0], atol=0.02)
 
 
 def _lightness(rows: np.ndarray) -> np.ndarray:
