@@ -13,6 +13,7 @@ import tracemalloc
 from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from functools import partial
+from statistics import median
 
 import numpy as np
 from numpy.typing import NDArray
@@ -62,13 +63,25 @@ def by_quad(columns: Columns, row: int) -> float:
     return float(d * quad(conditional, -9.0, 9.0 + b + a, epsabs=1e-10, epsrel=1e-10, limit=200)[0])
 
 
-def nanoseconds(call: Callable[[], object], rows: int, repeats: int = 5) -> float:
-    best = np.inf
-    for _ in range(repeats):
-        start = time.perf_counter()
+def nanoseconds(call: Callable[[], object], rows: int) -> float:
+    start = time.perf_counter()
+    call()
+    return (time.perf_counter() - start) / rows * 1e9
+
+
+def in_turn(calls: Sequence[tuple[Callable[[], object], int]], rounds: int = 9) -> list[list[float]]:
+    """Nanoseconds a row of each call, all of them once a round: this machine's speed drifts within seconds, so only
+    figures of one round may be divided by each other."""
+    for call, _ in calls:
         call()
-        best = min(best, time.perf_counter() - start)
-    return float(best / rows * 1e9)
+    return [[nanoseconds(call, rows) for call, rows in calls] for _ in range(rounds)]
+
+
+def compare(words: str, rounds: list[list[float]], first: int, second: int, unit: str) -> None:
+    """Print the median cost of call `first`, and the median of its ratio to call `second` round by round."""
+    cost = median(one[first] for one in rounds)
+    ratio = median(one[first] / one[second] for one in rounds)
+    print(f"{words:58}{cost:10.0f} ns an option{ratio:10.2f} {unit}")
 
 
 def peak_megabytes(call: Callable[[], object]) -> float:
@@ -81,39 +94,38 @@ def peak_megabytes(call: Callable[[], object]) -> float:
 
 def main() -> None:
     rows = int(sys.argv[1]) if len(sys.argv) > 1 else 1_000_000
-    columns, some = book(rows), min(rows, 100_000)
+    columns, some = book(rows), min(rows, 50_000)
     few = [column[:some] for column in columns]
     with ThreadPoolExecutor(2) as pool:
-        plain = nanoseconds(lambda: plain_kirk(columns), rows)
-        blocked = nanoseconds(lambda: kirk.value(*columns), rows)
-        threaded = nanoseconds(lambda: kirk.value(*columns, executor=pool), rows)
-        all_kirk = nanoseconds(lambda: kirk.sensitivities(*columns), rows, 3)
-        whole = nanoseconds(lambda: whole_bjerksund_stensland(columns), rows, 3)
-        all_blocked = nanoseconds(lambda: bjerksund_stensland.sensitivities(*columns), rows, 3)
-        all_threaded = nanoseconds(lambda: bjerksund_stensland.sensitivities(*columns, executor=pool), rows, 3)
-    true = nanoseconds(lambda: yardstick.value(*few), some, 3)
-    true_all = nanoseconds(lambda: yardstick.sensitivities(*few), some, 3)
-    quad_one = nanoseconds(lambda: [by_quad(columns, row) for row in range(30)], 30, 2)
-    table = (
-        ("Kirk value, plain whole arrays", plain, 1.0, "of plain"),
-        ("Kirk value, blocks, one thread", blocked, plain / blocked, "x faster than plain"),
-        ("Kirk value, blocks, two threads", threaded, plain / threaded, "x faster than plain"),
-        ("Kirk, all sensitivities", all_kirk, all_kirk / blocked, "Kirk values"),
-        ("Bjerksund-Stensland, all sensitivities, whole arrays", whole, whole / blocked, "Kirk values"),
-        ("  blocks, one thread", all_blocked, whole / all_blocked, "x faster than whole"),
-        ("  blocks, two threads", all_threaded, whole / all_threaded, "x faster than whole"),
-        (f"Yardstick value, {some} rows", true, true / blocked, "Kirk values"),
-        (f"Yardstick, all sensitivities, {some} rows", true_all, true_all / blocked, "Kirk values"),
-        ("scipy.integrate.quad, one value", quad_one, quad_one / true, "Yardstick values"),
-    )
-    print(f"{rows} rows{'':46}ns per option")
-    for words, cost, ratio, unit in table:
-        print(f"{words:54}{cost:12.0f}{ratio:12.2f} {unit}")
-    print("growth, ns per option")
+        kirks = in_turn([
+            (lambda: plain_kirk(columns), rows),
+            (lambda: kirk.value(*columns), rows),
+            (lambda: kirk.value(*columns, executor=pool), rows),
+        ])  # fmt: skip
+        compare("Kirk value, plain whole arrays", kirks, 0, 0, "of itself")
+        compare("  blocks, one thread", kirks, 1, 0, "of plain")
+        compare("  blocks, two threads", kirks, 2, 0, "of plain")
+        closed = in_turn([
+            (lambda: whole_bjerksund_stensland(columns), rows),
+            (lambda: bjerksund_stensland.sensitivities(*columns), rows),
+            (lambda: bjerksund_stensland.sensitivities(*columns, executor=pool), rows),
+        ], 5)  # fmt: skip
+        compare("Bjerksund-Stensland, all sensitivities, whole arrays", closed, 0, 0, "of itself")
+        compare("  blocks, one thread", closed, 1, 0, "of whole")
+        compare("  blocks, two threads", closed, 2, 0, "of whole")
+    true = in_turn([
+        (lambda: kirk.value(*columns), rows),
+        (lambda: yardstick.value(*few), some),
+        (lambda: yardstick.sensitivities(*few), some),
+        (lambda: [by_quad(columns, row) for row in range(30)], 30),
+    ])  # fmt: skip
+    compare(f"Yardstick value, {some} rows", true, 1, 0, "Kirk values")
+    compare(f"Yardstick, all sensitivities, {some} rows", true, 2, 0, "Kirk values")
+    compare("scipy.integrate.quad, one value", true, 3, 1, "Yardstick values")
+    print("growth, ns an option")
     for size in (1_000, 10_000, 100_000, rows):
         part = [column[:size] for column in columns]
-        cost = nanoseconds(partial(kirk.value, *part), size)
-        dear = nanoseconds(partial(yardstick.value, *part), size, 2) if size <= 100_000 else float("nan")
+        ((cost, dear),) = in_turn([(partial(kirk.value, *part), size), (partial(yardstick.value, *part), size)], 1)
         print(f"  {size:9d} rows   Kirk {cost:8.0f}   Yardstick {dear:8.0f}")
     print("peak memory, MB")
     for words, call in (
