@@ -9,9 +9,9 @@ boundary's x where its y is at the node. That takes the inverse of y(tau): a cub
 tangent at the point reached, whose remaining `miss` in y is known.
  How many nodes are enough depends on how steeply the boundary leaves its tangent within five deviations (`slope`) and
 on how far the weights lie apart (`spread`). The table was found by comparison with the trapezoid rule on 400,000
-options, half of them from corners (tests/benchmarks/pricing_accuracy.py): worst difference 4.3e-13 of the larger
-forward, which is the trapezoid's own tail. Boundaries that turn back never come here, and a row that misses a node by
-more than 0.001 is sent on.
+options, half of them from corners: worst difference 4.3e-13 of the larger forward, which is the trapezoid's own tail
+(tests/benchmarks/pricing_accuracy.py checks what came of it against an integration that shares nothing with it).
+Boundaries that turn back never come here, and a row that misses a node by more than 0.001 is sent on.
 """
 
 from __future__ import annotations

@@ -1,12 +1,12 @@
 """The option on one normal (Gaussian) quantity, the piece Bachelier's formulas for a spread and for an outright share.
 
-With x the moneyness, s its standard deviation to expiry, z = |x|/s, n and N the normal density and distribution function,
-the undiscounted value is the intrinsic value plus the time value
+With x the moneyness, s its standard deviation to expiry, z = |x|/s, n and N the normal density and distribution
+function, the undiscounted value is the intrinsic value plus the time value
 
     s (n(z) - z N(-z)) = s n(z) (1 - z M(z)),    M(z) = N(-z)/n(z) the Mills ratio.
 
-The left form loses all digits far from the money; the right one, with M from the scaled complementary error function, loses
-a factor z^2, which is no more than the exponent of n(z) loses by itself. The same form serves the inversion.
+The left form loses all digits far from the money; the right one, with M from the scaled complementary error function,
+loses a factor z^2, which is no more than the exponent of n(z) loses by itself. The same form serves the inversion.
 """
 
 from __future__ import annotations
@@ -30,7 +30,7 @@ _MILLS = np.sqrt(0.5 * np.pi)
 # Above this time value over moneyness the start of the inversion is exact: its error is of relative order 1/(4 pi c^2).
 _AT_THE_MONEY = 1e8
 _STARTING_ROUNDS = 2
-_HALLEY_ROUNDS = 4
+_HALLEY_ROUNDS = 3
 
 
 class _Shape(NamedTuple):
@@ -49,8 +49,8 @@ def _shape(distance: Array) -> _Shape:
 
 
 def fill(sign: float, moneyness: Array, vol: Array, root_time: Array, out: Array) -> None:
-    """Undiscounted value, delta, gamma, vega and theta (minus the derivative in the expiry) into the rows of `out`, or the
-    value alone where it has one row. `sign` is +1 for a call, -1 for a put; `vol` is absolute.
+    """Undiscounted value, delta, gamma, vega and theta (minus the derivative in the expiry) into the rows of `out`,
+    or the value alone where it has one row. `sign` is +1 for a call, -1 for a put; `vol` is absolute.
 
     Without deviation the value is intrinsic, the delta one half at the kink, and all else zero.
     """
@@ -67,27 +67,33 @@ def fill(sign: float, moneyness: Array, vol: Array, root_time: Array, out: Array
     out[4] = -0.5 * density * vol / np.maximum(root_time, LEAST)
 
 
+def density(moneyness: Array, deviation: Array) -> Array:
+    """n(x/s): the derivative of the undiscounted value in the deviation, for deviations above zero."""
+    distance = moneyness / deviation
+    return np.asarray(PEAK * np.exp(-0.5 * distance * distance))
+
+
 def _start(ratio: Array) -> Array:
-    """z from c = n(z)/z - N(-z): near the money c = 1/(z sqrt(2 pi)) - 1/2 + ..., far from it c = n(z)/(z^3 + 3 z) - ...;
-    the second is solved for the exponent by repeated substitution."""
+    """z from c = n(z)/z - N(-z): near the money c = 1/(z sqrt(2 pi)) - 1/2 + ..., far from it c = n(z)/(z^3 + 3 z) -
+    ...; the second is solved for the exponent by repeated substitution."""
     near = PEAK / (ratio + 0.5)
     far = np.maximum(near, 0.5)
     for _ in range(_STARTING_ROUNDS):
         level = -2.0 * np.log(ratio * far * (far * far + 3.0) / PEAK)
         far = np.sqrt(np.maximum(level, 0.25))
-    return np.where(ratio > 0.25, near, far)
+    return np.asarray(np.where(ratio > 0.25, near, far))
 
 
 def deviation_of(time_value: Array, moneyness: Array) -> Array:
-    """The standard deviation to expiry that gives this undiscounted time value; both arrays of one shape, time values zero
-    (which need none) or above.
+    """The standard deviation to expiry that gives this undiscounted time value; both arrays of one shape, time values
+    zero (which need none) or above.
 
-    The equation in z is the one P. Jaeckel ("Implied normal volatility", Wilmott, 2017) and J. Choi, K. Kim and M. Kwak
-    ("Numerical approximation of the implied volatility under arithmetic Brownian motion", Applied Mathematical Finance 16,
-    2009, 261-268) solve by rational functions. Here two asymptotic starts lead into Halley's method on the logarithm of c
-    as a function of ln z, whose derivatives all come from the Mills ratio: -1/k, and z (z k - M)/k^2.
-    Measured: 4 rounds leave at most 4e-16 relative beyond what the rounding of the time value itself forces, for time values
-    from 1e-300 to 1e300 times the moneyness.
+    The equation in z is the one P. Jaeckel ("Implied normal volatility", Wilmott, 2017) and J. Choi, K. Kim and M.
+    Kwak ("Numerical approximation of the implied volatility under arithmetic Brownian motion", Applied Mathematical
+    Finance 16, 2009, 261-268) solve by rational functions. Here two asymptotic starts lead into Halley's method on
+    the logarithm of c as a function of ln z, whose derivatives all come from the Mills ratio: -1/k, and z (z k -
+    M)/k^2. Measured against 60 digits, for time values of 1e-300 to 1e12 times the moneyness: the start is within 5
+    %, one round leaves 4e-2 at worst, two 1e-6, the three taken 1.4e-15 (99th percentile 8e-16).
     """
     with np.errstate(all="ignore"):
         ratio = time_value / np.abs(moneyness)
@@ -103,4 +109,4 @@ def deviation_of(time_value: Array, moneyness: Array) -> Array:
         shape = _shape(distance)
         near = time_value / (shape.density * shape.worth)
         deviation = np.where(distance < 1.0, near, np.abs(moneyness) / distance)
-    return np.where(time_value > 0.0, deviation, 0.0)
+    return np.asarray(np.where(time_value > 0.0, deviation, 0.0))

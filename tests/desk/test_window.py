@@ -213,11 +213,17 @@ def test_a_book_saved_and_opened_again_is_equal(
     assert path.read_bytes() == book_bytes(saved)
 
 
+DEMO = shipped.sample_book("ardenmoor_winter").read_bytes()
+
+
 @pytest.mark.parametrize(
     "content",
-    [b"", b"{", b"\x00\x01\x02", b'{"format": "other"}', b"[" * 10_000],
-    ids=["empty", "cut", "binary", "foreign", "deep"],
-)
+    [
+        b"", b"{", DEMO[:5000], b"\x00\x01\x02", b'{"format": "other"}', b"[" * 10_000,
+        DEMO.replace(b'"version": 1', b'"version": 99'), DEMO.replace(b"0.032", b'"x"'),
+    ],
+    ids=["empty", "cut at once", "cut", "binary", "foreign", "deep", "newer", "wrong entry"],
+)  # fmt: skip
 def test_a_file_that_cannot_be_read_is_told_of_and_the_open_book_stays(
     desk: Desk, two_market_book: Book, tmp_path: Path, content: bytes
 ) -> None:
@@ -227,6 +233,17 @@ def test_a_file_that_cannot_be_read_is_told_of_and_the_open_book_stays(
     assert "broken.json was not opened" in window.message.sentence()
     assert window.workbench.book is two_market_book
     assert set(window.workbench.results.state.tolist()) == {State.CURRENT}
+
+
+def test_a_file_too_large_to_be_a_book_is_told_of_without_reading_it(
+    desk: Desk, two_market_book: Book, tmp_path: Path
+) -> None:
+    window, path = desk.open(two_market_book), tmp_path / "huge.json"
+    with path.open("wb") as huge:
+        huge.truncate(2**30)  # a hole: it takes no room on the disk
+    assert not window.files.open(path)
+    assert "larger than" in window.message.sentence()
+    assert window.workbench.book is two_market_book
 
 
 def test_a_folder_that_cannot_be_written_to_is_told_of_and_nothing_is_lost(
