@@ -8,7 +8,8 @@ They value the rule "exercise when S1 is at least a power of S2": with G = F2 + 
 a straight line in the plane of the two normals. The value of following it is F1 N(d1) - F2 N(d2) - K N(d3) with
 
     d1 = (l + v^2/2)/v,   d3 = d1 - a (a - rho p)/v,   d2 = d3 + b (rho a - p)/v,
- where a and b are the legs' deviations to expiry, p = q b, v^2 = a^2 - 2 rho a p + p^2 and l = ln(F1/G). The put
+
+where a and b are the legs' deviations to expiry, p = q b, v^2 = a^2 - 2 rho a p + p^2 and l = ln(F1/G). The put
 values the opposite rule. No rule is worth more than the best one: the formula stays below the true value.
 """
 

@@ -1,10 +1,12 @@
 """Cutting a call into cache-sized blocks and mapping them, inline or over the caller's executor.
- A formula of forty array passes over a million rows is bound by memory: every pass fetches from and stores to main
+
+A formula of forty array passes over a million rows is bound by memory: every pass fetches from and stores to main
 memory what the pass before it had just made. Cut into blocks of some thousand rows the intermediate results stay in
 the cache, and the buffers they live in are reused from block to block instead of being handed back to the operating
 system and faulted in again. The block kernel never sees where its rows came from; its results depend on each row
 alone, so that neither the cut nor the executor can change a digit.
- With an executor the blocks are gathered into tasks. A pool of threads of this process writes into the results in
+
+With an executor the blocks are gathered into tasks. A pool of threads of this process writes into the results in
 place; a task for any other executor returns its results, so that one of processes or of another machine serves as
 well.
 """

@@ -1,18 +1,22 @@
 """The exercise boundary in the plane of the two normal factors.
- Write a = sigma1 sqrt(T), b = sigma2 sqrt(T), rho the correlation, and let the short leg end at S2 = F2 e^tau. The
+
+Write a = sigma1 sqrt(T), b = sigma2 sqrt(T), rho the correlation, and let the short leg end at S2 = F2 e^tau. The
 option is on the edge of exercise when the long leg ends at S1 = F2 e^tau + K, so that one parameter, tau, walks the
 whole boundary and no root is ever searched. With lg = ln(S1/F1) the two standard normals are there
 
     Z1 = lg/a + a/2,      Z2 = tau/b + b/2,
- and two independent ones follow by half angles, c = sqrt((1 + rho)/2) and s = sqrt((1 - rho)/2), both free of
+
+and two independent ones follow by half angles, c = sqrt((1 + rho)/2) and s = sqrt((1 - rho)/2), both free of
 cancellation as rho nears either end:
 
     p = (Z1 + Z2)/(2c),   q = (Z1 - Z2)/(2s).
- lg is convex in tau, so the exercise region is a convex set. The frame is laid at tau0, near the boundary's closest
+
+lg is convex in tau, so the exercise region is a convex set. The frame is laid at tau0, near the boundary's closest
 point to the middle of the weight: y runs along the boundary's tangent there, towards growing tau, and x across it
 into exercise. Valuing in a leg as numeraire moves the weight by that leg's deviation along its axis, so the three
 weights of the value F1 P1 - F2 P2 - K P0 are standard normals about (A1, B1), (A2, B2) and the origin.
- Every other point is reached from tau0 by its distance d in tau alone: lg - lg0 = ln(1 - L0 + L0 e^d) with L0 the
+
+Every other point is reached from tau0 by its distance d in tau alone: lg - lg0 = ln(1 - L0 + L0 e^d) with L0 the
 short leg's share of S1 at tau0. The share at a point is the slope of lg, and since the frame lies on the tangent, x -
 x0 is lg less its tangent, never negative.
 """

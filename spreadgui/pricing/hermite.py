@@ -1,13 +1,16 @@
 """Few Gauss-Hermite nodes along the boundary's tangent, for boundaries that hardly bend.
- The direction is that of J. Choi ("Sum of all Black-Scholes-Merton models: an efficient pricing method for spread,
+
+The direction is that of J. Choi ("Sum of all Black-Scholes-Merton models: an efficient pricing method for spread,
 basket, and Asian options", Journal of Futures Markets 38, 2018, 627-644): integrate across the boundary in closed
 form and along it numerically. In the frame of `boundary` the masses are
 
     P = sum over nodes of W_j exp(B t_j - B^2/2) Phi(A - x_j),
- with the nodes t_j and the shifts B along the boundary counted from the middle of the legs' weights, and x_j the
+
+with the nodes t_j and the shifts B along the boundary counted from the middle of the legs' weights, and x_j the
 boundary's x where its y is at the node. That takes the inverse of y(tau): a cubic guess, one Newton step, and the
 tangent at the point reached, whose remaining `miss` in y is known.
- How many nodes are enough depends on how steeply the boundary leaves its tangent within five deviations (`slope`) and
+
+How many nodes are enough depends on how steeply the boundary leaves its tangent within five deviations (`slope`) and
 on how far the weights lie apart (`spread`). The table was found by comparison with the trapezoid rule on 400,000
 options, half of them from corners: worst difference 4.3e-13 of the larger forward, which is the trapezoid's own tail
 (tests/benchmarks/pricing_accuracy.py checks what came of it against an integration that shares nothing with it).

@@ -1,5 +1,6 @@
 """Checks and broadcasting of the arguments every method takes.
- Each argument is checked at its own shape, before broadcasting, so that a scalar volatility beside a million strikes
+
+Each argument is checked at its own shape, before broadcasting, so that a scalar volatility beside a million strikes
 costs one comparison. A refusal is a `ValueError` whose message begins with the argument's name.
 """
 

@@ -1,5 +1,6 @@
 """The two legs as the formulas want them: standard deviations to expiry, strike at zero or above, one sign per row.
- Role exchange. The holder of a call with a strike below zero receives F_long + |K| and pays F_short, which is what
+
+Role exchange. The holder of a call with a strike below zero receives F_long + |K| and pays F_short, which is what
 the holder of a put on the legs swapped round holds: max(F_long - F_short - K, 0) = max(|K| - (F_short - F_long), 0).
 The identity is exact. For an approximation built around a strike at zero or above it is more than a convenience,
 because the lump F_short + K, which the approximation treats as lognormal, never comes near zero.

@@ -1,7 +1,8 @@
 """Kirk's formula with the skew correction of E. Alòs and J. A. León, "On the short-maturity behaviour of the implied
 volatility skew for random strike options and applications to option pricing approximation", Quantitative Finance 16,
 2016, 31-42.
- Seen from the paid lump G = F2 + K, the ratio X = F1/G has Kirk's volatility sigma = sigma(q), q = F2/G, which moves
+
+Seen from the paid lump G = F2 + K, the ratio X = F1/G has Kirk's volatility sigma = sigma(q), q = F2/G, which moves
 as F2 does. That is a stochastic volatility tied to X, and at short times its implied volatility has at the money the
 slope, in ln X,
 
@@ -11,7 +12,8 @@ since sigma moves by (q sigma2 - rho sigma1) sigma2 q (1 - q)/sigma per unit of 
 sigma2 (rho sigma1 - q sigma2) a year. The corrected volatility is the line through Kirk's at the money,
 
     I = sigma + slope (ln F1 - ln(F2 + K)).
- In deviations to expiry, with p = q b, u = (p - rho a)/v and g = u^2/v, the slope is (1/2) b^2 q (1 - q) g. Its level
+
+In deviations to expiry, with p = q b, u = (p - rho a)/v and g = u^2/v, the slope is (1/2) b^2 q (1 - q) g. Its level
 is Kirk's, so that at the money itself nothing is gained; the gain is away from it.
 """
 

@@ -1,14 +1,17 @@
 """Gauss-Legendre panels along the exercise boundary: the safety net under the trapezoid rule.
- The same integral, cut where the boundary needs it. A stretch of boundary is bisected in tau until its arc is short
+
+The same integral, cut where the boundary needs it. A stretch of boundary is bisected in tau until its arc is short
 against the unit width of the weight, stretches that cannot meet the weight are dropped, those the whole weight lies
 beyond are done in closed form, and each that is left takes twelve nodes. Nothing is assumed about the boundary's
 shape, so hairpins, second arms and bends sharper than the weight is wide come out as well as a straight line does, at
 some ten times the cost.
- Two bounds make the bisection safe. The speed of the boundary in tau, the norm of an affine function of the share L,
+
+Two bounds make the bisection safe. The speed of the boundary in tau, the norm of an affine function of the share L,
 is convex in L, hence at most (1 - L) speed_low + L speed_high; since L is the slope of lg, its integral, the arc from
 one end to the other, is at most speed_low (d tau - d lg) + speed_high d lg. And no point of a stretch is farther from
 the nearer end than half its arc.
- Distances are measured from the frame with ln(1 + L0 (e^d - 1)) taken by log1p and expm1, so that nothing is lost
+
+Distances are measured from the frame with ln(1 + L0 (e^d - 1)) taken by log1p and expm1, so that nothing is lost
 where a correlation within 1e-15 of one makes the whole crossing of the weight as short as 1e-8 in tau.
 """
 

@@ -3,7 +3,8 @@
 By Green's theorem the exercise probability under a unit normal weight about (A, B) is an integral along the boundary,
 
     P = integral of phi(y - B) Phi(A - x) dy,
- in any frame and for a boundary that turns back as well. With tau as parameter the integrand is analytic and dies out
+
+in any frame and for a boundary that turns back as well. With tau as parameter the integrand is analytic and dies out
 at both ends like a normal density, so equally spaced nodes converge exponentially (Poisson's summation formula). Sums
 over every other node are two trapezoid rules of twice the step; how far they differ tells how far their mean can be
 off. What their difference g is worth depends on the step h in tau. The integrand is singular at a distance pi from

@@ -1,7 +1,8 @@
 """How accurate the methods are. Prints the figures quoted in the docstrings of spreadgui.pricing.
 
     python tests/benchmarks/pricing_accuracy.py [cases in the hard box]
- First the Yardstick over the hard box, and over an ordinary one, against a slow integration that shares no idea with
+
+First the Yardstick over the hard box, and over an ordinary one, against a slow integration that shares no idea with
 it: the conditional Black value of the long leg, summed over the short leg's normal factor by 16-node Gauss-Legendre
 panels that are graded towards every point where the conditional option passes through the money. That integration is
 itself first held against tests/reference/integrated.csv. Then the closed forms over the ordinary box against the

@@ -1,5 +1,6 @@
 """Every sensitivity of every method against differences taken at 50 digits.
- The closed forms are written down here a second time, from the papers, in mpmath; the Yardstick is held against a
+
+The closed forms are written down here a second time, from the papers, in mpmath; the Yardstick is held against a
 trapezoid sum of the conditional Black value over the short leg's normal factor, which shares nothing with its
 boundary integral.
 """
