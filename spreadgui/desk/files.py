@@ -29,10 +29,11 @@ def settings() -> QSettings:
 class BookFiles(QObject):
     """The file of the book on the workbench.
 
-    `moved` tells that the path changed, `failed(sentence, details)` that a file could not be read or written,
-    `done(sentence)` that one was.
+    `opened` tells that another book has come, `moved` that the path changed, `failed(sentence, details)` that a file
+    could not be read or written, `done(sentence)` that one was.
     """
 
+    opened = Signal()
     moved = Signal()
     failed = Signal(str, str)
     done = Signal(str)
@@ -129,6 +130,7 @@ class BookFiles(QObject):
         self._workbench.open(book)
         if path is not None:
             self._remember(path)
+        self.opened.emit()
         self.moved.emit()
 
     def _ask_to_save(self) -> int:

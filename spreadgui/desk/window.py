@@ -27,6 +27,7 @@ if TYPE_CHECKING:
 NO_ROW = "Choose a position in the grid."
 READING_HEIGHT = 350
 LATE_MILLISECONDS = 120
+SMALLEST = (1000, 680)  # below, the Landscape's axis runs into its own title
 
 
 class Window(QMainWindow):
@@ -55,6 +56,7 @@ class Window(QMainWindow):
         set_tone(self._opening, "muted")
         self.setCentralWidget(self._opening)
         self.setWindowTitle("spreadgui")
+        self.setMinimumSize(*SMALLEST)
         self.resize(1600, 1000)
 
     def open_after_paint(self, book: Book, path: Path | None) -> None:
@@ -191,6 +193,7 @@ class Window(QMainWindow):
         workbench.saved_changed.connect(self._refresh_title)
         workbench.failed.connect(self.message.say)
         workbench.finished.connect(self._settle_message)
+        self.files.opened.connect(self.positions.show_from_the_top)
         self.files.moved.connect(self._refresh_title)
         self.files.failed.connect(self.message.say)
         self.files.done.connect(self._on_done)

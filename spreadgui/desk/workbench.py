@@ -90,8 +90,7 @@ class Workbench(QObject):
         self._session.redo()
 
     def open(self, book: Book) -> None:
-        """Work on another book; the focus goes to its first row."""
-        self._focus = None
+        """Work on another book; the focus stays on its row where the book has one."""
         self._session.open(book)
 
     def mark_saved(self) -> None:

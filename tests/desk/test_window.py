@@ -19,6 +19,7 @@ from spreadgui.pricing import yardstick
 from spreadgui.valuation import price
 from spreadgui.valuation.results import State
 from spreadgui.valuation.table import value_book
+from tests.books import book_of, spark
 from tests.desk.conftest import Desk
 
 
@@ -122,6 +123,36 @@ def test_escape_puts_a_wrong_entry_away(desk: Desk, two_market_book: Book, qtbot
     assert not window.positions.view.cells._note.isVisible()
     assert window.workbench.book is two_market_book
     assert not window.workbench.modified
+
+
+def test_a_wrong_entry_left_by_the_mouse_stays_and_other_cells_can_be_edited_meanwhile(
+    desk: Desk, two_market_book: Book, qtbot: QtBot
+) -> None:
+    window = desk.open(two_market_book)
+    view = window.positions.view
+    go(window, 0, "strike")
+    editor = type_into(qtbot, window, "12,5x", end=None)
+    place = view.visualRect(window.positions.model.index(1, window.positions.model.column("strike"))).center()
+    qtbot.mouseClick(view.viewport(), Qt.MouseButton.LeftButton, pos=place)
+    assert editor.isVisible()
+    assert editor.text() == "12,5x"
+    assert view.cells._note.isVisible()
+    go(window, 2, "strike")
+    type_into(qtbot, window, "99")
+    assert window.workbench.book.positions[2].strike == 99.0
+    assert window.workbench.book.positions[0].strike == two_market_book.positions[0].strike
+    assert editor.text() == "12,5x"
+    editor.setFocus()
+    qtbot.keyClick(editor, Qt.Key.Key_Escape)
+    assert not view.cells._note.isVisible()
+
+
+def test_another_book_of_the_same_length_is_read_anew(desk: Desk, two_market_book: Book, qtbot: QtBot) -> None:
+    window = desk.open(book_of(spark(name="first")))
+    window.workbench.open(book_of(spark(name="second", strike=1.0)))
+    settle(qtbot, window)
+    assert window.reading.subtitle().startswith("second")
+    assert window.landscape.surface.subject == "second"
 
 
 def test_a_burst_of_edits_ends_in_the_last_state_with_no_stale_number(

@@ -58,6 +58,7 @@ class GridDelegate(QStyledItemDelegate):
         super().__init__(view)
         self._model = model
         self._note = EntryNote(view.viewport())
+        self._wrong: QWidget | None = None  # the editor that the note speaks of
         self.set_theme(theme)
 
     def set_theme(self, theme: Theme) -> None:
@@ -138,6 +139,8 @@ class GridDelegate(QStyledItemDelegate):
             if area is not None and rect.right() > area.width():
                 rect.moveRight(area.width())
         editor.setGeometry(rect)
+        if editor is self._wrong:  # the grid has scrolled: its note goes along
+            self._note.stand_beside(rect)
 
     def setEditorData(self, editor: QWidget, index: Index) -> None:
         if not editor.property("filled"):
@@ -149,8 +152,13 @@ class GridDelegate(QStyledItemDelegate):
             return
         model.setData(index, _text_of(editor))
 
+    def is_wrong(self, editor: QWidget) -> bool:
+        """Whether the text in an editor cannot go into its cell; says why beside it."""
+        return not self._check(editor, self._index_of(editor))
+
     def destroyEditor(self, editor: QWidget, index: Index) -> None:
-        self._note.hide()
+        if editor is self._wrong:
+            self._settle()
         super().destroyEditor(editor, index)
 
     def eventFilter(self, editor: QObject, event: QEvent) -> bool:
@@ -182,12 +190,18 @@ class GridDelegate(QStyledItemDelegate):
         reason = self._model.refusal(index, _text_of(editor))
         if not reason:
             set_refused(editor, False)
-            self._note.hide()
+            if editor is self._wrong:
+                self._settle()
         elif not quiet:
             set_refused(editor, True)
-            self._note.show_beside(editor.geometry(), reason)
+            self._wrong = editor
+            self._note.say(reason, editor.geometry())
             self.refused.emit(index, reason)
         return not reason
+
+    def _settle(self) -> None:
+        self._wrong = None
+        self._note.hide()
 
     def _view(self) -> QTableView:
         view = self.parent()
@@ -196,8 +210,7 @@ class GridDelegate(QStyledItemDelegate):
 
     def _index_of(self, editor: QWidget) -> QModelIndex:
         place = editor.property("cell")
-        assert isinstance(place, QPersistentModelIndex)
-        return self._model.index(place.row(), place.column())
+        return self._model.index(place.row(), place.column()) if place is not None else QModelIndex()
 
 
 class EntryNote(QLabel):
@@ -212,18 +225,22 @@ class EntryNote(QLabel):
         self.setFocusPolicy(Qt.FocusPolicy.NoFocus)
         self.hide()
 
-    def show_beside(self, cell: QRect, sentence: str) -> None:
-        """Stand under the cell, or above it where there is no room, never cut by the edge of the grid."""
+    def say(self, sentence: str, cell: QRect) -> None:
+        """Show `sentence` beside `cell`."""
         self.setText(sentence)
         self.setAccessibleName(sentence)
         self.adjustSize()
+        self.stand_beside(cell)
+        self.show()
+        self.raise_()
+
+    def stand_beside(self, cell: QRect) -> None:
+        """Stand under the cell, or above it where there is no room, never cut by the edge of the grid."""
         area = self._area.rect()
         below = cell.bottom() + 3
         y = below if below + self.height() <= area.bottom() else cell.top() - self.height() - 3
         x = max(2, min(cell.left(), area.right() - self.width() - 2))
         self.move(QPoint(x, y))
-        self.show()
-        self.raise_()
 
 
 def _choice_editor(parent: QWidget, choices: tuple[str, ...], *, editable: bool) -> QComboBox:

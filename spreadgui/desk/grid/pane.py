@@ -50,6 +50,12 @@ class PositionsPane(Pane):
         self.view.set_theme(theme)
         self._fit_columns()
 
+    @Slot()
+    def show_from_the_top(self) -> None:
+        """As for a book that has just been opened: its first position, columns as wide as it needs."""
+        self._fit_columns()
+        self.view.go_to(0, self.model.column("name"))
+
     # --- acts
 
     def insert_row(self) -> None:

@@ -11,7 +11,7 @@ from typing import Any
 
 from PySide6.QtCore import QItemSelectionModel, QModelIndex, QPersistentModelIndex, QRect, Qt, Signal, Slot
 from PySide6.QtGui import QKeyEvent, QResizeEvent
-from PySide6.QtWidgets import QAbstractItemView, QFrame, QHeaderView, QTableView, QWidget
+from PySide6.QtWidgets import QAbstractItemDelegate, QAbstractItemView, QFrame, QHeaderView, QTableView, QWidget
 
 from spreadgui.desk.grid.delegate import GridDelegate
 from spreadgui.desk.grid.model import GridModel
@@ -60,6 +60,13 @@ class PlainGridView(QTableView):
         area = self.changed_area(first, last)
         if not area.isEmpty():
             self.viewport().update(area)
+
+    def closeEditor(self, editor: QWidget, hint: QAbstractItemDelegate.EndEditHint) -> None:
+        """Qt closes an editor when the current cell changes; a wrong entry stays until Escape or mending ends it."""
+        if hint == QAbstractItemDelegate.EndEditHint.RevertModelCache or not self.cells.is_wrong(editor):
+            super().closeEditor(editor, hint)
+        else:
+            self.setState(self.State.NoState)  # else no other cell could be edited meanwhile
 
     def changed_area(self, first: Index, last: Index) -> QRect:
         """The visible rectangle between two cells, empty where none of it is in sight."""
