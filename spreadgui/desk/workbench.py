@@ -13,6 +13,7 @@ from spreadgui.book.changes import Change
 from spreadgui.book.records import Book
 from spreadgui.book.session import BookSession
 from spreadgui.desk.jobs import Failure, Finished, Job, PricingThread
+from spreadgui.valuation.reading import Reading
 from spreadgui.valuation.results import LiveResults, Part
 from spreadgui.valuation.slate import RowArray, Slate, Succession, follow
 from spreadgui.valuation.surface import Surface, SurfaceRequest
@@ -173,15 +174,15 @@ class Workbench(QObject):
             self.finished.emit(result)
         elif isinstance(result, Failure):
             self._fail(result)
-        elif result.revision == self.slate.revision:  # type: ignore[attr-defined]  # a Reading or a Surface
+        elif isinstance(result, Reading | Surface) and result.revision == self.slate.revision:
             self._take_focus(result)
 
-    def _take_focus(self, result: object) -> None:
+    def _take_focus(self, result: Reading | Surface) -> None:
         if isinstance(result, Surface):
             if result.request == self._request:
                 self._focus_due = False
                 self.drawn.emit(result)
-        elif result.row == self._focus:  # type: ignore[attr-defined]  # a Reading
+        elif result.row == self._focus:
             self.read.emit(result)
             if self._request is None:
                 self._focus_due = False

@@ -7,7 +7,17 @@ loaded when it is first named: SciPy takes longer to load than a window to be pa
 from importlib import import_module
 from types import ModuleType
 
-__all__ = ["bjerksund_stensland", "black76", "kirk", "margrabe", "modified_kirk", "yardstick"]
+__all__ = [
+    "bachelier",
+    "bjerksund_stensland",
+    "black76",
+    "implied",
+    "kirk",
+    "margrabe",
+    "modified_kirk",
+    "shifted",
+    "yardstick",
+]
 
 
 def __getattr__(name: str) -> ModuleType:
