@@ -6,6 +6,8 @@ Every change of the book goes in through `apply`, `undo` and `redo`; everything 
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING, cast
+
 import numpy as np
 from PySide6.QtCore import QObject, QTimer, Signal, Slot
 
@@ -13,10 +15,12 @@ from spreadgui.book.changes import Change
 from spreadgui.book.records import Book
 from spreadgui.book.session import BookSession
 from spreadgui.desk.jobs import Failure, Finished, Job, PricingThread
-from spreadgui.valuation.reading import Reading
 from spreadgui.valuation.results import LiveResults, Part
 from spreadgui.valuation.slate import RowArray, Slate, Succession, follow
 from spreadgui.valuation.surface import Surface, SurfaceRequest
+
+if TYPE_CHECKING:  # it brings the formulas along, which the window does without until it has been painted
+    from spreadgui.valuation.reading import Reading
 
 _NO_ROWS: RowArray = np.empty(0, dtype=np.intp)
 
@@ -174,18 +178,20 @@ class Workbench(QObject):
             self.finished.emit(result)
         elif isinstance(result, Failure):
             self._fail(result)
-        elif isinstance(result, Reading | Surface) and result.revision == self.slate.revision:
-            self._take_focus(result)
+        elif isinstance(result, Surface):
+            self._take_surface(result)
+        else:
+            self._take_reading(cast("Reading", result))
 
-    def _take_focus(self, result: Reading | Surface) -> None:
-        if isinstance(result, Surface):
-            if result.request == self._request:
-                self._focus_due = False
-                self.drawn.emit(result)
-        elif result.row == self._focus:
-            self.read.emit(result)
-            if self._request is None:
-                self._focus_due = False
+    def _take_surface(self, surface: Surface) -> None:
+        if surface.revision == self.slate.revision and surface.request == self._request:
+            self._focus_due = False
+            self.drawn.emit(surface)
+
+    def _take_reading(self, reading: Reading) -> None:
+        if reading.revision == self.slate.revision and reading.row == self._focus:
+            self._focus_due = self._request is not None  # the surface of the row is still to come
+            self.read.emit(reading)
 
     def _fail(self, failure: Failure) -> None:
         self._last_failure = failure
