@@ -169,9 +169,9 @@ def _size(text: str) -> tuple[int, int]:
     parts = text.lower().split("x")
     if len(parts) == 2 and all(part.isascii() and part.isdigit() for part in parts):
         width, height = int(parts[0]), int(parts[1])
-        if 1000 <= width <= 8000 and 680 <= height <= 8000:
+        if 320 <= width <= 8000 and 200 <= height <= 8000:
             return width, height
-    raise CommandError(f"--size: expected WIDTHxHEIGHT from 1000x680 to 8000x8000, got {quoted(text)}")
+    raise CommandError(f"--size: expected WIDTHxHEIGHT from 320x200 to 8000x8000, got {quoted(text)}")
 
 
 def _placed(path: Path, read: Callable[[], Result]) -> Result:

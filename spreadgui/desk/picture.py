@@ -2,19 +2,31 @@
 
 from __future__ import annotations
 
+import math
 import sys
 from pathlib import Path
 
-from PySide6.QtCore import QBuffer, QCoreApplication, QIODevice, QMessageLogContext, QtMsgType, qInstallMessageHandler
+from PySide6.QtCore import (
+    QBuffer,
+    QCoreApplication,
+    QIODevice,
+    QMessageLogContext,
+    Qt,
+    QtMsgType,
+    qInstallMessageHandler,
+)
 from PySide6.QtWidgets import QApplication
 
 from spreadgui.book.records import Book
 from spreadgui.desk.look.theme import apply, theme_for
-from spreadgui.desk.window import Window
+from spreadgui.desk.window import SMALLEST, Window
 
 
 def draw_window(book: Book, path: Path, width: int, height: int, *, dark: bool = False, row: int = 0) -> bytes:
-    """The window on `book` as PNG, `width` by `height` pixels, once every number in it is current."""
+    """The window on `book` as PNG, `width` by `height` pixels, once every number in it is current.
+
+    A picture smaller than the window can be is drawn at the window's smallest size and scaled down.
+    """
     qInstallMessageHandler(_pass_on)
     app = QApplication.instance() or QApplication(["spreadgui"])
     assert isinstance(app, QApplication)
@@ -23,12 +35,13 @@ def draw_window(book: Book, path: Path, width: int, height: int, *, dark: bool =
     window = Window(theme)
     try:
         window.assemble(book, path)
-        window.resize(width, height)
+        scale = max(1.0, SMALLEST[0] / width, SMALLEST[1] / height)
+        window.resize(math.ceil(width * scale), math.ceil(height * scale))
         window.show()
         window.complete()
         window.positions.view.go_to(max(row, 0), window.positions.model.column("name"))
         _settle(window)
-        return _png_of(window)
+        return _png_of(window, width, height)
     finally:
         window.shut()
         window.hide()
@@ -49,8 +62,12 @@ def _settle(window: Window) -> None:
         window.workbench.wait_until_idle()
 
 
-def _png_of(window: Window) -> bytes:
+def _png_of(window: Window, width: int, height: int) -> bytes:
+    picture = window.grab()
+    if (picture.width(), picture.height()) != (width, height):
+        smooth = Qt.TransformationMode.SmoothTransformation
+        picture = picture.scaled(width, height, Qt.AspectRatioMode.IgnoreAspectRatio, smooth)
     buffer = QBuffer()
     buffer.open(QIODevice.OpenModeFlag.WriteOnly)
-    window.grab().save(buffer, "PNG")
+    picture.save(buffer, "PNG")
     return bytes(buffer.data().data())

@@ -205,10 +205,11 @@ def test_a_reader_that_goes_away_is_no_error() -> None:
     assert done.stdout.startswith("name,")
 
 
-def test_a_picture_is_drawn_without_a_screen(tmp_path: Path) -> None:
+@pytest.mark.parametrize("size", [(1280, 800), (640, 480), (2400, 900)], ids=str)
+def test_a_picture_is_drawn_without_a_screen(tmp_path: Path, size: tuple[int, int]) -> None:
     target = tmp_path / "out.png"
-    done = run("picture", DEMO, "--png", target, "--size", "1280x800")
+    done = run("picture", DEMO, "--png", target, "--size", f"{size[0]}x{size[1]}")
     assert (done.returncode, done.stdout, done.stderr) == (0, "", "")
     data = target.read_bytes()
     assert data.startswith(b"\x89PNG")
-    assert (int.from_bytes(data[16:20]), int.from_bytes(data[20:24])) == (1280, 800)
+    assert (int.from_bytes(data[16:20]), int.from_bytes(data[20:24])) == size
