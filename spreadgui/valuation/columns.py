@@ -14,7 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from spreadgui.book.fields import BY_KEY, Field
-from spreadgui.pricing.methods import METHODS
+from spreadgui.pricing.methods import METHODS, Method
 from spreadgui.pricing.methods import method as method_of
 from spreadgui.valuation.results import LiveResults, State
 from spreadgui.valuation.shown import trimmed_text
@@ -85,6 +85,22 @@ def _gap(key: str) -> Numbers:
     return lambda _slate, results, rows: results.values(key)[rows] - results.values("yardstick")[rows]
 
 
+def _gap_share(key: str) -> Numbers:
+    def share(slate: Slate, results: LiveResults, rows: Rows) -> FloatArray:
+        premium = results.values("yardstick")[rows]
+        with np.errstate(divide="ignore", invalid="ignore"):
+            found: FloatArray = np.where(premium > 0, _gap(key)(slate, results, rows) / premium, np.nan)
+        return found
+
+    return share
+
+
+def _rate_sensitivity(slate: Slate, results: LiveResults, rows: Rows) -> FloatArray:
+    """Forwards stand still as the rate moves, so only the discount factor tells: minus the time, as a share of value."""
+    found: FloatArray = -slate.values("years")[rows] * slate.values("quantity")[rows] * results.values("value")[rows]
+    return found
+
+
 def _worded(key: str, *, unit: str = "", pinned: bool = False) -> Column:
     field = BY_KEY[key]
     return Column(key, field.heading, field.help, unit, field, words=_field_words(key), pinned=pinned)
@@ -123,19 +139,22 @@ def _by_method() -> list[Column]:
 
 
 def _gaps() -> list[Column]:
+    return [column for method in METHODS if not method.reference for column in _gaps_of(method)]
+
+
+def _gaps_of(method: Method) -> list[Column]:
+    """In money and in per cent of premium; the screen has the two methods that a desk is most likely to quote."""
+    shown = method.key in ("kirk", "bjerksund_stensland")
+    about = f"Formula gap: the unit value by {method.name} minus the Yardstick's"
+    gap, share = f"{method.key}_gap", f"{method.key}_gap_share"
+    heading = f"{method.name} gap"
     return [
+        _computed(gap, heading, f"{about}.", _gap(method.key), "unit value", decimals=5, on_screen=shown),
         _computed(
-            f"{method.key}_gap",
-            f"{method.name} gap",
-            f"Formula gap: the unit value by {method.name} minus the Yardstick's.",
-            _gap(method.key),
-            "unit value",
-            decimals=5,
-            on_screen=method.key in ("kirk", "bjerksund_stensland"),
-        )
-        for method in METHODS
-        if not method.reference
-    ]
+            share, heading, f"{about}, in per cent of the Yardstick's.", _gap_share(method.key), "% of premium",
+            scale=100.0, decimals=3, on_screen=shown,
+        ),
+    ]  # fmt: skip
 
 
 # key, heading, position's heading on screens, screen scaling, words for the scaling, help
@@ -226,6 +245,9 @@ COLUMNS: tuple[Column, ...] = (
     *_by_method(),
     *_gaps(),
     *_position_sensitivities(),
+    _computed("position_rate_sensitivity", "Rate sensitivity",
+              "Change of value per 0.01 of the zero rate, for the whole position; the forwards stand still.",
+              _rate_sensitivity, "per 0.01", scale=0.01, decimals=0),
     *_unit_sensitivities(),
     _worded("note"),
     Column("state", "State", "Current, pricing, incomplete or refused.", words=_state_word),
@@ -242,7 +264,8 @@ VALUE_TABLE: tuple[str, ...] = (
     *(method.key for method in METHODS),
     "method", "position_value",
     *(key for key, *_ in _SENSITIVITIES),
-    *(f"position_{key}" for key, *_ in _SENSITIVITIES),
+    *(f"position_{key}" for key, *_ in _SENSITIVITIES), "position_rate_sensitivity",
+    *(f"{method.key}_gap{kind}" for method in METHODS if not method.reference for kind in ("", "_share")),
     "state", "reason",
 )  # fmt: skip
 

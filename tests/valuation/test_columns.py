@@ -89,6 +89,23 @@ def test_a_gap_is_the_method_less_the_yardstick() -> None:
     assert gap == pytest.approx(valued.results.values("kirk") - valued.results.values("yardstick"))
 
 
+def test_a_gap_in_per_cent_is_of_the_yardsticks_premium_and_absent_without_one() -> None:
+    valued = value_book(book_of(spark(), spark(expiry=book_of().valuation_date, strike=1000.0)))
+    share = BY_COLUMN_KEY["kirk_gap_share"].numbers(valued.slate, valued.results, slice(None))
+    expected = valued.results.values("kirk")[0] / valued.results.values("yardstick")[0] - 1
+    assert share[0] == pytest.approx(expected, abs=1e-12)
+    assert math.isnan(share[1])
+
+
+def test_the_rate_sensitivity_is_what_another_zero_rate_does() -> None:
+    rows = (spark(), season(), cap(), spark(kind="forward"))
+    found = value_book(book_of(*rows))
+    column = BY_COLUMN_KEY["position_rate_sensitivity"].numbers(found.slate, found.results, slice(None))
+    up, down = (value_book(book_of(*rows, zero_rate=0.03 + step)) for step in (1e-5, -1e-5))
+    moved = (up.results.values("value") - down.results.values("value")) / 2e-5 * found.slate.values("quantity")
+    assert column == pytest.approx(moved, rel=1e-6)
+
+
 @given(st.floats(min_value=0, max_value=1e6, allow_nan=False))
 def test_a_volatility_shown_for_editing_reads_back_to_the_last_digit(value: float) -> None:
     column = BY_COLUMN_KEY["vol_long"]
