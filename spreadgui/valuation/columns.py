@@ -96,7 +96,7 @@ def _gap_share(key: str) -> Numbers:
 
 
 def _rate_sensitivity(slate: Slate, results: LiveResults, rows: Rows) -> FloatArray:
-    """Forwards stand still as the rate moves, so only the discount factor tells: minus the time, as a share of value."""
+    """Forwards stand still as the rate moves, so only discounting tells: minus the time, as a share of the value."""
     found: FloatArray = -slate.values("years")[rows] * slate.values("quantity")[rows] * results.values("value")[rows]
     return found
 
