@@ -11,7 +11,7 @@ import os
 import sys
 from collections.abc import Callable, Iterable, Sequence
 from pathlib import Path
-from typing import TypeVar
+from typing import NoReturn, TypeVar
 
 import msgspec
 
@@ -67,8 +67,15 @@ def _dispatch(given: list[str]) -> int:
     return _window(given)
 
 
+class _Parser(argparse.ArgumentParser):
+    """Tells a wrong argument in one line, as everything else is told; the usage is in --help."""
+
+    def error(self, message: str) -> NoReturn:
+        self.exit(FAULTY, f"{self.prog}: {message} (see {self.prog} --help)\n")
+
+
 def _parser(name: str, about: str) -> argparse.ArgumentParser:
-    return argparse.ArgumentParser(prog=name, description=about, allow_abbrev=False)
+    return _Parser(prog=name, description=about, allow_abbrev=False)
 
 
 def _window(given: list[str]) -> int:
@@ -82,6 +89,7 @@ def _window(given: list[str]) -> int:
     options = parser.parse_args(given)
     path = Path(options.book) if options.book else shipped.sample_book("ardenmoor_winter")
     if not _has_display():
+        _placed(path, lambda: load(path, datetime.date.today()))  # a wrong path is told of here as well
         sys.stderr.write(_NO_SCREEN + "\n")
         return CLEAN
     from spreadgui.desk.program import run_window
@@ -104,6 +112,8 @@ def _value(given: list[str]) -> int:
     options = parser.parse_args(given)
     if options.csv == "-" == options.json:
         raise CommandError("only one of --csv and --json can go to standard output")
+    for option, target in (("--csv", options.csv), ("--json", options.json)):
+        _spare(options.book, option, target)
     book = _book_to_value(options.book, options.date)
     from spreadgui.valuation import table
 
@@ -156,7 +166,10 @@ def _picture(given: list[str]) -> int:
     parser.add_argument("--row", metavar="N", type=int, default=1, help="the position that is looked at (default 1)")
     options = parser.parse_args(given)
     width, height = _size(options.size)
+    _spare(options.book, "--png", str(options.png))
     book = _placed(options.book, lambda: read_book(options.book))
+    if not 1 <= options.row <= max(1, len(book.positions)):
+        raise CommandError(f"--row: expected a number from 1 to {len(book.positions)}, got {options.row}")
     os.environ["QT_QPA_PLATFORM"] = "offscreen"
     from spreadgui.desk.picture import draw_window
 
@@ -182,6 +195,12 @@ def _placed(path: Path, read: Callable[[], Result]) -> Result:
         raise BookError(fault if fault.where else Fault(str(path), fault.what) for fault in error.faults) from None
 
 
+def _spare(book: Path, option: str, target: str | None) -> None:
+    """Refuse to write over the very file that is read."""
+    if target not in (None, "-") and os.path.realpath(str(target)) == os.path.realpath(book):
+        raise CommandError(f"{option}: {target} is the book itself, and would be lost")
+
+
 def _put(target: str, text: str) -> None:
     if target == "-":
         _print(text, end="")
@@ -199,10 +218,12 @@ def _write(path: Path, data: bytes) -> None:
 
 
 def _print(text: str, end: str = "\n") -> None:
+    if sys.stdout is None:  # started with standard output closed
+        raise CommandError("there is no standard output to write to")
     sys.stdout.write(text + end)
     sys.stdout.flush()
 
 
 def _tell(lines: Iterable[str]) -> None:
-    for line in lines:
+    for line in lines if sys.stderr is not None else ():
         sys.stderr.write(f"{line}\n")

@@ -158,6 +158,11 @@ def test_a_broken_file_gets_one_clear_line_and_nothing_is_written(tmp_path: Path
         (("value", DEMO, "--csv", "absent/out.csv"), "absent/out.csv: cannot be written"),
         (("value", DEMO, "--csv", "-", "--json", "-"), "only one of --csv and --json"),
         (("picture", DEMO, "--png", "out.png", "--size", "large"), "--size: expected WIDTHxHEIGHT"),
+        (("picture", DEMO, "--png", "out.png", "--row", "999"), "--row: expected a number from 1 to 50, got 999"),
+        (("picture", DEMO), "the following arguments are required: --png"),
+        (("value",), "the following arguments are required: BOOK"),
+        (("check", DEMO, "more"), "unrecognized arguments: more"),
+        (("absent.json",), "absent.json: there is no such file"),
     ],
     ids=lambda value: None if isinstance(value, tuple) else value[:20],
 )
@@ -167,6 +172,22 @@ def test_a_wrong_argument_gets_one_clear_line(tmp_path: Path, arguments: tuple[o
     assert said in done.stderr
     assert "Traceback" not in done.stderr
     assert len(done.stderr.splitlines()) == 1
+
+
+@pytest.mark.parametrize(("command", "option"), [("value", "--csv"), ("value", "--json"), ("picture", "--png")])
+def test_the_book_itself_is_never_written_over(book_file: Path, command: str, option: str) -> None:
+    before = book_file.read_bytes()
+    done = run(command, book_file, option, book_file)
+    assert done.returncode == 2
+    assert "is the book itself" in done.stderr
+    assert book_file.read_bytes() == before
+
+
+def test_a_closed_standard_output_is_told_of_in_one_line(book_file: Path) -> None:
+    command = f"{sys.executable} -m spreadgui value {book_file} --csv - >&-"
+    done = subprocess.run(command, shell=True, capture_output=True, text=True, timeout=60, check=False)
+    assert done.returncode == 2
+    assert done.stderr == "spreadgui: there is no standard output to write to\n"
 
 
 def test_every_fault_of_a_list_of_positions_is_told_with_its_line(tmp_path: Path) -> None:
