@@ -11,7 +11,10 @@ from dataclasses import dataclass
 
 @dataclass(frozen=True)
 class Act:
-    """One act: its menu, whether the tool bar has it (`on_bar`), whether a divider goes before it (`parted`)."""
+    """One act: its menu, whether the tool bar has it (`on_bar`), whether a divider goes before it (`parted`).
+
+    The key of a `grid_only` act works while the keyboard is in the grid: elsewhere it would change cells unseen.
+    """
 
     id: str
     words: str
@@ -21,6 +24,7 @@ class Act:
     icon: str = ""
     on_bar: bool = False
     parted: bool = False
+    grid_only: bool = False
 
 
 MENUS = ("Book", "Edit", "View", "Help")
@@ -33,8 +37,9 @@ ACTS: tuple[Act, ...] = (
     Act("quit", "Quit", "Book", "Close the window.", "Ctrl+Q", parted=True),
     Act("undo", "Undo", "Edit", "Take the last change back.", "Ctrl+Z", "undo", on_bar=True, parted=True),
     Act("redo", "Redo", "Edit", "Make the last undone change again.", "Ctrl+Shift+Z", "redo", on_bar=True),
-    Act("edit_cell", "Edit cell", "Edit", "Change the current cell.", "F2", parted=True),
-    Act("clear", "Clear cells", "Edit", "Empty the selected cells; own marks return to Marks.", "Delete"),
+    Act("edit_cell", "Edit cell", "Edit", "Change the current cell.", "F2", parted=True, grid_only=True),
+    Act("clear", "Clear cells", "Edit", "Empty the selected cells; own marks return to Marks.", "Delete",
+        grid_only=True),
     Act("insert_row", "Insert row", "Edit", "A new position under the current one.", "Ctrl+I", "insert-row",
         on_bar=True, parted=True),
     Act("duplicate_rows", "Duplicate rows", "Edit", "The selected positions once more.", "Ctrl+D", "duplicate-row",

@@ -156,6 +156,9 @@ class Window(QMainWindow):
         action.setToolTip(f"{act.help}  {act.keys}".strip())
         action.setStatusTip(act.help)
         action.triggered.connect(self.handlers[act.id])
+        if act.grid_only:
+            action.setShortcutContext(Qt.ShortcutContext.WidgetWithChildrenShortcut)
+            self.positions.addAction(action)
         if act.icon:
             set_icon(action, act.icon, self.theme)
         self.actions_by_id[act.id] = action

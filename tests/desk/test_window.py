@@ -403,6 +403,19 @@ def test_clearing_an_own_mark_returns_the_row_to_marks(desk: Desk, two_market_bo
     assert shown(window, 0, "position_value") == value
 
 
+def test_delete_empties_cells_only_while_the_keyboard_is_in_the_grid(
+    desk: Desk, two_market_book: Book, qtbot: QtBot
+) -> None:
+    window = desk.open(two_market_book)
+    go(window, 0, "name")
+    window.reading.setFocus()
+    qtbot.keyClick(QApplication.focusWidget(), Qt.Key.Key_Delete)
+    assert window.workbench.book is two_market_book
+    window.positions.view.setFocus()
+    qtbot.keyClick(window.positions.view, Qt.Key.Key_Delete)
+    assert window.workbench.book.positions[0].name == ""
+
+
 def test_looking_into_a_cell_is_no_edit(desk: Desk, two_market_book: Book, qtbot: QtBot) -> None:
     window = desk.open(two_market_book)
     for key in ("vol_long", "strike", "side", "expiry", "long_leg"):
