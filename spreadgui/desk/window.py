@@ -7,14 +7,14 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from PySide6.QtCore import QEvent, QObject, Qt, QTimer, Slot
-from PySide6.QtGui import QAction, QCloseEvent
-from PySide6.QtWidgets import QApplication, QLabel, QMainWindow, QMenu, QSplitter, QToolBar, QVBoxLayout, QWidget
+from PySide6.QtGui import QCloseEvent
+from PySide6.QtWidgets import QApplication, QLabel, QMainWindow, QSplitter, QVBoxLayout, QWidget
 
-from spreadgui.desk.acts import ACTS, MENUS, Act
 from spreadgui.desk.look.theme import Theme, apply, set_tone
 
 if TYPE_CHECKING:
     from spreadgui.book.records import Book
+    from spreadgui.desk.actbar import ActBar
     from spreadgui.desk.bookbar import BookBar
     from spreadgui.desk.files import BookFiles
     from spreadgui.desk.grid.pane import PositionsPane
@@ -39,6 +39,7 @@ class Window(QMainWindow):
 
     workbench: Workbench
     files: BookFiles
+    acts: ActBar
     positions: PositionsPane
     reading: ReadingPane
     message: MessageStrip
@@ -49,7 +50,6 @@ class Window(QMainWindow):
         super().__init__()
         self.theme = theme
         self.landscape: LandscapePane | None = None
-        self.actions_by_id: dict[str, QAction] = {}
         self.handlers: dict[str, Callable[[], object]] = {}
         self._opening = QLabel("Opening the book…")
         self._opening.setAlignment(Qt.AlignmentFlag.AlignCenter)
@@ -70,6 +70,7 @@ class Window(QMainWindow):
 
     def assemble(self, book: Book, path: Path | None) -> None:
         """Put the panes on `book`; `path` is the file that saving writes to, None where there is none yet."""
+        from spreadgui.desk.actbar import ActBar
         from spreadgui.desk.bookbar import BookBar
         from spreadgui.desk.files import BookFiles
         from spreadgui.desk.grid.pane import PositionsPane
@@ -92,6 +93,7 @@ class Window(QMainWindow):
         self._late = QTimer(self, singleShot=True, interval=LATE_MILLISECONDS)
         self._late.timeout.connect(self._fade)
         self.handlers = self._handlers()
+        self.acts = ActBar(self, self.handlers, self.files, self.positions, self.theme)
         self._lay_out()
         self._join()
         self._refresh_title()
@@ -102,7 +104,6 @@ class Window(QMainWindow):
         from spreadgui.desk.look.icons import icon
 
         self.setWindowIcon(icon("app", self.theme))
-        self._make_acts()
         self._right = QSplitter(Qt.Orientation.Vertical)
         for pane in (self._vacant, self.reading):
             self._right.addWidget(pane)
@@ -126,43 +127,6 @@ class Window(QMainWindow):
         column.addWidget(self._across, 1)
         self.setCentralWidget(body)
         self.setStatusBar(self.status)
-
-    def _make_acts(self) -> None:
-        bar = QToolBar("Acts")
-        bar.setMovable(False)
-        bar.setToolButtonStyle(Qt.ToolButtonStyle.ToolButtonTextBesideIcon)
-        bar.setContextMenuPolicy(Qt.ContextMenuPolicy.PreventContextMenu)
-        self.addToolBar(bar)
-        menus = {words: self.menuBar().addMenu(words) for words in MENUS}
-        for act in ACTS:
-            action = self._make_act(act)
-            menu = menus[act.menu]
-            if act.parted:
-                menu.addSeparator()
-                if act.on_bar:
-                    bar.addSeparator()
-            menu.addAction(action)
-            if act.on_bar:
-                bar.addAction(action)
-            if act.id == "open":
-                self._recent = menu.addMenu("Recent books")
-                self._recent.aboutToShow.connect(self._fill_recent)
-
-    def _make_act(self, act: Act) -> QAction:
-        from spreadgui.desk.look.icons import set_icon
-
-        action = QAction(act.words, self)
-        action.setShortcut(act.keys)
-        action.setToolTip(f"{act.help}  {act.keys}".strip())
-        action.setStatusTip(act.help)
-        action.triggered.connect(self.handlers[act.id])
-        if act.grid_only:
-            action.setShortcutContext(Qt.ShortcutContext.WidgetWithChildrenShortcut)
-            self.positions.addAction(action)
-        if act.icon:
-            set_icon(action, act.icon, self.theme)
-        self.actions_by_id[act.id] = action
-        return action
 
     def _handlers(self) -> dict[str, Callable[[], object]]:
         """Who carries out each act of the acts table."""
@@ -272,13 +236,7 @@ class Window(QMainWindow):
         book = self.workbench.book
         self.setWindowTitle(f"{book.title or 'Untitled book'}[*] – spreadgui")
         self.setWindowModified(self.workbench.modified)
-        for act, words, verb in (
-            ("undo", self.workbench.undo_words, "Undo"),
-            ("redo", self.workbench.redo_words, "Redo"),
-        ):
-            self.actions_by_id[act].setEnabled(words is not None)
-            self.actions_by_id[act].setText(verb)
-            self.actions_by_id[act].setToolTip(f"{verb}: {words}" if words else f"Nothing to {verb.lower()}")
+        self.acts.show_undo(self.workbench.undo_words, self.workbench.redo_words)
 
     @Slot(str)
     def _on_done(self, sentence: str) -> None:
@@ -292,19 +250,6 @@ class Window(QMainWindow):
         over = failure is not None and failure.revision < self.workbench.slate.revision
         if over and failure is not None and self.message.sentence() == failure.sentence:
             self.message.put_away()
-
-    @Slot()
-    def _fill_recent(self) -> None:
-        self._recent.clear()
-        for path in self.files.recent():
-            self._add_recent(self._recent, path)
-        if self._recent.isEmpty():
-            self._recent.addAction("None yet").setEnabled(False)
-
-    def _add_recent(self, menu: QMenu, path: Path) -> None:
-        action = menu.addAction(path.name)
-        action.setToolTip(str(path))
-        action.triggered.connect(lambda: self.files.open_asking(path))
 
     # --- look and end
 

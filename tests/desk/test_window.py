@@ -183,19 +183,19 @@ def test_undo_and_redo_go_through_every_edit(desk: Desk, two_market_book: Book, 
     go(window, 0, "strike")
     type_into(qtbot, window, "7")
     go(window, 1, "name")
-    window.actions_by_id["duplicate_rows"].trigger()
-    window.actions_by_id["delete_rows"].trigger()
-    window.actions_by_id["insert_row"].trigger()
+    window.acts.actions["duplicate_rows"].trigger()
+    window.acts.actions["delete_rows"].trigger()
+    window.acts.actions["insert_row"].trigger()
     edited = window.workbench.book
     assert window.workbench.modified
     for _ in range(4):
-        window.actions_by_id["undo"].trigger()
+        window.acts.actions["undo"].trigger()
     settle(qtbot, window)
     assert window.workbench.book == two_market_book
     assert not window.workbench.modified
-    assert not window.actions_by_id["undo"].isEnabled()
+    assert not window.acts.actions["undo"].isEnabled()
     for _ in range(4):
-        window.actions_by_id["redo"].trigger()
+        window.acts.actions["redo"].trigger()
     settle(qtbot, window)
     assert window.workbench.book == edited
     assert agrees_with_its_book(window)
@@ -313,11 +313,11 @@ def test_closing_asks_about_unsaved_changes(desk: Desk, two_market_book: Book, q
 
 def test_a_new_book_keeps_the_markets_and_says_what_to_do(desk: Desk, two_market_book: Book, qtbot: QtBot) -> None:
     window = desk.open(two_market_book)
-    window.actions_by_id["new"].trigger()
+    window.acts.actions["new"].trigger()
     settle(qtbot, window)
     assert window.workbench.book.markets == two_market_book.markets
     assert window.positions.is_empty()
-    window.actions_by_id["insert_row"].trigger()
+    window.acts.actions["insert_row"].trigger()
     settle(qtbot, window)
     assert not window.positions.is_empty()
     assert shown(window, 0, "position_value") == "incomplete"
@@ -396,7 +396,7 @@ def test_clearing_an_own_mark_returns_the_row_to_marks(desk: Desk, two_market_bo
     assert "Own mark" in model.tip(index)
     assert shown(window, 0, "position_value") != value
     go(window, 0, "forward_long")
-    window.actions_by_id["clear"].trigger()
+    window.acts.actions["clear"].trigger()
     settle(qtbot, window)
     assert window.workbench.book.positions[0].own_forward_long is None
     assert "From Marks" in model.tip(index)
@@ -420,7 +420,7 @@ def test_looking_into_a_cell_is_no_edit(desk: Desk, two_market_book: Book, qtbot
     window = desk.open(two_market_book)
     for key in ("vol_long", "strike", "side", "expiry", "long_leg"):
         go(window, 0, key)
-        window.actions_by_id["edit_cell"].trigger()
+        window.acts.actions["edit_cell"].trigger()
         qtbot.keyClick(QApplication.focusWidget(), Qt.Key.Key_Return)
     assert window.workbench.book is two_market_book
     assert not window.workbench.modified
@@ -429,7 +429,7 @@ def test_looking_into_a_cell_is_no_edit(desk: Desk, two_market_book: Book, qtbot
 def test_a_choice_is_made_by_keyboard(desk: Desk, two_market_book: Book, qtbot: QtBot) -> None:
     window = desk.open(two_market_book)
     go(window, 0, "kind")
-    window.actions_by_id["edit_cell"].trigger()
+    window.acts.actions["edit_cell"].trigger()
     editor = QApplication.focusWidget()
     qtbot.keyClick(editor, Qt.Key.Key_Down)
     qtbot.keyClick(editor, Qt.Key.Key_Return)
