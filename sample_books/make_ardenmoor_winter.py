@@ -9,6 +9,11 @@ Forwards     A level for each calendar month, which drifts by a fixed factor a y
 Volatilities far + (near - far) * exp(-pull * years to delivery): contracts move less the further off they are
              (P. Samuelson, "Proof that properly anticipated prices fluctuate randomly", Industrial Management Review
              6, 1965). Winter power and gas move more by a fixed factor.
+             North and Quill print hours below zero, so their forwards are lognormal with a shift added; their
+             volatilities are lower by as much as the shifted forward is higher, which leaves the absolute moves as
+             they were. Two markets for the nights alone are normal, with volatilities in crowns. Inside its delivery
+             month a day of power moves as if it had a multiple of the nearest volatility (prices of single days are
+             far more volatile than those of months: common practice, no source), a day of gas likewise.
 Correlations Four causes move the nine markets: fuel, weather, oil and heavy industry. A market's loadings say how much
              of its variance each cause explains, the rest is its own. The correlation of two markets is the dot
              product of their loadings, so the matrix of all of them cannot have a negative eigenvalue, but for the
@@ -18,7 +23,8 @@ Mixed legs   Gas plus allowance, or two barrels of motor spirit and one of gasoi
              the other leg (the moments of a sum of lognormals are exact; E. Levy, "Pricing European average rate
              currency options", Journal of International Money and Finance 11, 1992, matches them this way).
 
-Ardenmoor has no clock change, so a month of power has 24 hours a day throughout.
+Ardenmoor has no clock change, so a month of power has 24 hours a day throughout. It rests on weekends and on three days
+around midwinter.
 """
 
 from __future__ import annotations
@@ -44,6 +50,23 @@ MONTHS = ("Jan", "Feb", "Mar", "Apr", "May", "Jun", "Jul", "Aug", "Sep", "Oct", 
 NORTH, SOUTH, QUILL = "Ardenmoor North", "Ardenmoor South", "Quill Island"
 GAS, COAL, ALLOWANCE = "Pellan gas point", "Storrow coal", "Ardenmoor allowance"
 CRUDE, SPIRIT, GASOIL = "Marrowgate crude", "Marrowgate motor spirit", "Marrowgate gasoil"
+
+NORTH_NIGHTS, QUILL_NIGHTS = "Ardenmoor North nights", "Quill Island nights"
+# What makes the forwards lognormal, CRN/MWh, and how many times the nearest volatility a single day has.
+SHIFTS: Mapping[str, float] = {NORTH: 20.0, QUILL: 15.0}
+DAILY: Mapping[str, float] = {NORTH: 2.4, SOUTH: 2.1, QUILL: 2.2, GAS: 1.5}
+# March to August 2027: forward and volatility of the hours from 23 to 7, both in CRN/MWh.
+NIGHT_MONTHS = DELIVERIES[2:8]
+NIGHTS: Mapping[str, tuple[tuple[float, float], ...]] = {
+    NORTH_NIGHTS: ((21.0, 23.5), (3.5, 22.0), (-4.0, 20.5), (1.5, 19.0), (9.5, 18.0), (13.0, 17.5)),
+    QUILL_NIGHTS: ((17.0, 29.0), (6.5, 27.0), (2.5, 25.0), (4.0, 23.5), (8.0, 22.0), (11.0, 21.5)),
+}
+NIGHT_CORRELATION, NIGHT_TIE, NIGHT_DAILY = 0.78, 0.8, 1.9
+HOLIDAYS = tuple(
+    datetime.date(year + (month == 1), month, day)
+    for year in (2026, 2027, 2028)
+    for month, day in ((12, 25), (12, 26), (1, 1))
+)
 
 # t CO2 a GJ of natural gas burnt: 56.1 kg/GJ, the default factor of the 2006 IPCC Guidelines (cited from memory).
 GAS_CARBON = 0.0561
@@ -139,7 +162,20 @@ def volatility(market: str, delivery: str) -> float:
     """The volatility, to a tenth of a point."""
     shape = SHAPES[market]
     season = shape.winter if int(delivery[5:]) in (1, 2, 12) else 1.0
-    return round(season * (shape.far + (shape.near - shape.far) * math.exp(-shape.pull * years_to(delivery))), 3)
+    level = season * (shape.far + (shape.near - shape.far) * math.exp(-shape.pull * years_to(delivery)))
+    return round(level * shifted_share(market, delivery), 3)
+
+
+def shifted_share(market: str, delivery: str) -> float:
+    """The forward over the forward with its shift added, which is the lower the more is added."""
+    return forward(market, delivery) / (forward(market, delivery) + SHIFTS.get(market, 0.0))
+
+
+def daily_volatility(market: str, delivery: str) -> float | None:
+    """The volatility of a day of the delivery month, to a hundredth; None for markets that have none."""
+    if market not in DAILY:
+        return None
+    return round(DAILY[market] * SHAPES[market].near * shifted_share(market, delivery), 2)
 
 
 def correlation(first: str, second: str) -> float:
@@ -151,11 +187,11 @@ def correlation(first: str, second: str) -> float:
 
 
 def business_days_before(delivery: str, days: int) -> datetime.date:
-    """The day that many business days before the delivery month begins; Ardenmoor rests on weekends only."""
+    """The day that many business days before the delivery month begins."""
     day = datetime.date(int(delivery[:4]), int(delivery[5:]), 1)
     while days:
         day -= datetime.timedelta(days=1)
-        days -= day.weekday() < 5
+        days -= day.weekday() < 5 and day not in HOLIDAYS
     return day
 
 
@@ -182,7 +218,8 @@ def mix_marks(mix: Mapping[str, float], delivery: str, other: str, expiry: datet
 def spread(
     name: str, quantity: float, long: tuple[str, str], short: tuple[str, str], strike: float, **rest: Any
 ) -> Position:
-    """A position on two listed legs, expiring three business days before the earlier delivery unless it says."""
+    """A position on two listed legs, expiring three business days before the earlier delivery unless it says; a strip
+    has its days for that."""
     legs: dict[str, Any] = {
         "long_leg": long[0],
         "long_delivery": long[1],
@@ -190,6 +227,8 @@ def spread(
         "short_delivery": short[1],
     }
     expiry = rest.pop("expiry", None) or business_days_before(min(long[1], short[1]), 3)
+    if "exercise" in rest:
+        expiry = None
     return Position(name=name, quantity=float(quantity), strike=strike, expiry=expiry, **legs, **rest)
 
 
@@ -248,6 +287,12 @@ def dark(megawatts: float, delivery: str, strike: float, **rest: Any) -> Positio
     return spread(name, quantity, (NORTH, delivery), (COAL, delivery), strike, short_ratio=0.36, **rest)
 
 
+def night_cable(name: str, megawatts: float, strike: float, delivery: str, **rest: Any) -> Position:
+    """North's nights against Quill's, eight hours of each day."""
+    words, quantity = f"{name} {month_words(delivery)}", megawatts * 8.0 * month_days(delivery)
+    return spread(words, quantity, (NORTH_NIGHTS, delivery), (QUILL_NIGHTS, delivery), strike, **rest)
+
+
 def crack(name: str, barrels: float, product: str, strike: float, delivery: str, **rest: Any) -> Position:
     """One barrel of a product against one of crude; the option ends five business days before the month."""
     expiry = business_days_before(delivery, 5)
@@ -300,7 +345,7 @@ def gas_plants() -> Iterator[Position]:
     yield clean_spark("Quay 3", 150, 7.1, 2.8, "2027-12")
     yield clean_spark("Quay 3", 150, 7.1, 2.8, "2028-01")
     yield clean_spark("Loomgate", 60, 9.4, 4.5, "2028-02")
-    yield spark("Sold", 100, 7.1, 25.0, "2028-01", side="short", note="Sold against Quay 3.")
+    yield spark("Sold", 100, 7.1, 25.0, "2028-01", side="short", quoted_premium=8.45, note="Sold against Quay 3.")
     yield spark("Floor", 100, 7.1, 12.0, "2027-10", kind="put", note="Pays when the spark ends below 12.")
 
 
@@ -342,7 +387,8 @@ def cables() -> Iterator[Position]:
         2.1,
         "2028-01",
         own_correlation=0.72,
-        note="Correlation as last quoted for this cable, in place of the book's.",
+        quoted_premium=12.75,
+        note="Correlation as last quoted for this cable, in place of the book's; the premium is today's offer.",
     )
     yield cable("South-Quill", 200, SOUTH, QUILL, 0.045, 2.1, "2027-12")
     yield cable("South-Quill", 200, SOUTH, QUILL, 0.045, 2.1, "2028-01")
@@ -363,6 +409,19 @@ def oil_store_and_coal() -> Iterator[Position]:
     yield dark(250, "2027-01", 40.5, note=strike)
     yield dark(250, "2027-12", 41.5)
     yield dark(250, "2028-01", 41.5)
+
+
+def days_and_nights() -> Iterator[Position]:
+    daily = "A strip: each business day of the month is exercised the business day before."
+    yield spark("Quay 3 daily", 380, 7.1, 2.8, "2027-02", exercise="business days", note=daily)
+    yield spark("Quay 3 daily", 380, 7.1, 2.8, "2028-01", exercise="business days", quoted_premium=24.15)
+    yield cable("Quill daily", 200, QUILL, SOUTH, 0.045, 2.1, "2027-03", exercise="all days")
+    yield spark("Peak cover", 80, 9.4, 30.0, "2028-02", side="short", exercise="business days")
+    below = "Normal forwards: nights print below zero, and volatilities are in CRN/MWh."
+    yield night_cable("Night cable", 120, 2.0, "2027-04", note=below)
+    yield night_cable("Night cable", 120, 2.0, "2027-05", quoted_premium=1.25)
+    yield night_cable("Night cable daily", 120, 2.0, "2027-06", exercise="all days")
+    yield night_cable("Night floor", 60, -5.0, "2027-05", kind="put", side="short")
 
 
 def outrights_and_hedges() -> Iterator[Position]:
@@ -392,10 +451,32 @@ def demo_book() -> Book:
             unit=shape.unit,
             tie_strength=shape.tie_strength,
             note=shape.note,
-            marks=tuple(Mark(month, forward(name, month), volatility(name, month)) for month in DELIVERIES),
+            dynamics="shifted lognormal" if name in SHIFTS else "lognormal",
+            shift=SHIFTS.get(name, 0.0),
+            holidays=HOLIDAYS,
+            marks=tuple(
+                Mark(month, forward(name, month), volatility(name, month), daily_volatility(name, month))
+                for month in DELIVERIES
+            ),
         )
         for name, shape in SHAPES.items()
     )
+    nights = tuple(
+        Market(
+            name=name,
+            unit="CRN/MWh",
+            tie_strength=NIGHT_TIE,
+            note="The hours from 23 to 7. Lot 1 MW over the nights of the month. Windy nights print below zero.",
+            dynamics="normal",
+            holidays=HOLIDAYS,
+            marks=tuple(
+                Mark(month, level, vol, round(NIGHT_DAILY * vol, 1))
+                for month, (level, vol) in zip(NIGHT_MONTHS, marks, strict=True)
+            ),
+        )
+        for name, marks in NIGHTS.items()
+    )
+    pairs = [Correlation(a, b, correlation(a, b)) for a, b in itertools.combinations(SHAPES, 2)]
     return Book(
         title="Ardenmoor winter",
         currency="CRN",
@@ -403,9 +484,15 @@ def demo_book() -> Book:
         zero_rate=ZERO_RATE,
         method="yardstick",
         note="Two winters of an invented market. Made by make_ardenmoor_winter.py, which says how.",
-        markets=markets,
-        correlations=tuple(Correlation(a, b, correlation(a, b)) for a, b in itertools.combinations(SHAPES, 2)),
-        positions=(*gas_plants(), *cables(), *oil_store_and_coal(), *outrights_and_hedges()),
+        markets=(*markets, *nights),
+        correlations=(*pairs, Correlation(NORTH_NIGHTS, QUILL_NIGHTS, NIGHT_CORRELATION)),
+        positions=(
+            *gas_plants(),
+            *cables(),
+            *oil_store_and_coal(),
+            *days_and_nights(),
+            *outrights_and_hedges(),
+        ),
     )
 
 

@@ -10,6 +10,7 @@ import datetime
 import os
 import sys
 from collections.abc import Callable, Iterable, Sequence
+from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 from typing import NoReturn, TypeVar
 
@@ -26,6 +27,8 @@ from spreadgui.book.records import Book
 
 Result = TypeVar("Result")
 
+# A second thread takes a third off a large book; more would wait for one another.
+_HANDS = 2
 CLEAN, FAULTY, BROKEN = 0, 2, 3
 _NO_SCREEN = (
     "spreadgui: there is no display to open a window on; without one, try "
@@ -117,7 +120,8 @@ def _value(given: list[str]) -> int:
     book = _book_to_value(options.book, options.date)
     from spreadgui.valuation import table
 
-    valued = table.value_book(book)
+    with ThreadPoolExecutor(_HANDS) as hands:
+        valued = table.value_book(book, hands)
     if options.csv is None and options.json is None:
         _print(table.summary_text(valued))
     if options.csv is not None:

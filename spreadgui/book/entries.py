@@ -147,6 +147,12 @@ def choice(*choices: str) -> Entry:
     return Entry(_one_of(choices), _words_text, choices)
 
 
+def choice_or_else(otherwise: str, *choices: str) -> Entry:
+    """An entry that is one of a few words, and `otherwise` where it is left empty."""
+    every = (otherwise, *choices)
+    return Entry(_optional(_one_of(every), otherwise), _words_text, every)
+
+
 WORDS = Entry(words, _words_text)
 NUMBER = Entry(number, _number_text, numeric=True)
 OPTIONAL_NUMBER = Entry(_optional(number, None), _number_text, numeric=True)

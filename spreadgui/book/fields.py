@@ -60,7 +60,20 @@ FIELDS: tuple[Field, ...] = (
         "Strike",
         "What the spread must exceed, in the unit of the payoff; may be below zero.",
     ),
-    Field("expiry", entries.DATE, "Expiry", "The day on which the option is exercised or lapses, as 2027-01-15.", True),
+    Field(
+        "expiry",
+        entries.DATE,
+        "Expiry",
+        "The day on which the option is exercised or lapses, as 2027-01-15; a strip has one for each of its days.",
+        True,
+    ),
+    Field(
+        "exercise",
+        entries.choice_or_else("once", "business days", "all days"),
+        "Exercise",
+        "Once, at the expiry; or a strip: each business day, or each day, of the delivery month for itself, "
+        "the business day before.",
+    ),
     Field(
         "own_forward_long",
         entries.OPTIONAL_NUMBER,
@@ -93,6 +106,12 @@ FIELDS: tuple[Field, ...] = (
         "Correlation",
         "The correlation of the two forwards; typed here it wins over the book's.",
         in_percent="a correlation from −100 to 100 %",
+    ),
+    Field(
+        "quoted_premium",
+        entries.OPTIONAL_NUMBER,
+        "Quoted premium",
+        "What is bid or offered for one unit of the payoff; the correlation that it implies is backed out.",
     ),
     Field("note", entries.WORDS, "Note", "Anything the desk wants to remember of this position."),
 )

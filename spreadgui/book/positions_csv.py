@@ -10,7 +10,7 @@ import codecs
 import csv
 import io
 from collections import Counter
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from pathlib import Path
 
 from spreadgui.book.entries import EntryError, Value, quoted
@@ -92,16 +92,20 @@ def _position(line: int, row: Sequence[str], fields: Sequence[Field], faults: li
     if len(row) > len(fields):
         faults.append(Fault(f"line {line}", f"has {len(row)} cells under {len(fields)} headings"))
     values: dict[str, Value] = {}
+    wrong: dict[str, str] = {}
     padded = [*row, *[""] * (len(fields) - len(row))]
-    for field, text in zip(fields, padded, strict=False):
+    # The expiry last: whether it is needed depends on the exercise, wherever that stands.
+    for field, text in sorted(zip(fields, padded, strict=False), key=lambda cell: cell[0].key == "expiry"):
         try:
-            values[field.key] = _read(field, text)
+            values[field.key] = _read(field, text, values)
         except EntryError as error:
-            faults.append(Fault(f"line {line}, {field.key}", str(error)))
+            wrong[field.key] = str(error)
+    faults += [Fault(f"line {line}, {field.key}", wrong[field.key]) for field in fields if field.key in wrong]
     return Position(**values)  # type: ignore[arg-type]  # each Field reads the type that its key has in Position
 
 
-def _read(field: Field, text: str) -> Value:
-    if field.needed and not text.strip():
+def _read(field: Field, text: str, others: Mapping[str, Value]) -> Value:
+    is_strip = others.get("exercise", "once") != "once"  # which has an expiry for each of its days
+    if field.needed and not text.strip() and not (is_strip and field.key == "expiry"):
         raise EntryError("is empty, and is needed")
     return field.entry.read(text)

@@ -69,7 +69,12 @@ def parse_book(data: bytes) -> Book:
         raise _too_new(book.version)
     if book.version < 1:
         raise BookError(_version_faults(book.version))
-    return book
+    return _of_this_version(book)
+
+
+def _of_this_version(book: Book) -> Book:
+    """A book of an earlier version: all that has come since has a default that means what was meant then."""
+    return book if book.version == VERSION else msgspec.structs.replace(book, version=VERSION)
 
 
 def _explain(data: bytes) -> BookError:

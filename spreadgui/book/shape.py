@@ -69,7 +69,10 @@ def _value_faults(value: Any, expected: Any, where: str) -> Iterator[Fault]:
             yield Fault(where, f"expected a list in brackets, got {_shown(value)}")
             return
         for index, one in enumerate(value):
-            yield from faults(one, item, f"{where}[{index}]")
+            yield from _value_faults(one, item, f"{where}[{index}]")
+        return
+    if isinstance(expected, type) and issubclass(expected, msgspec.Struct):
+        yield from faults(value, expected, where)
         return
     if not _fits(value, expected):
         yield Fault(where, f"expected {_words(expected)}, got {_shown(value)}")

@@ -104,24 +104,29 @@ def _lines(record: msgspec.Struct, indent: str) -> Iterator[bytes]:
     for index, (key, value) in enumerate(entries):
         comma = b"," if index + 1 < len(entries) else b""
         opening = f'{indent}  "{key}": '.encode()
-        if isinstance(value, tuple):
+        if _is_of_records(value):
             yield opening + b"["
             yield from _items(value, indent + "    ")
             yield f"{indent}  ]".encode() + comma
         else:
-            yield opening + _encode(value) + comma
+            yield opening + msgspec.json.format(_encode(value), indent=0) + comma
     yield indent.encode() + b"}"
 
 
 def _items(records: tuple[msgspec.Struct, ...], indent: str) -> Iterator[bytes]:
     for index, record in enumerate(records):
         comma = b"," if index + 1 < len(records) else b""
-        if _holds_records(type(record)) and any(isinstance(value, tuple) for _, value in _entries(record)):
+        if _holds_records(type(record)) and any(_is_of_records(value) for _, value in _entries(record)):
             *opened, last = _lines(record, indent)
             yield from opened
             yield last + comma
         else:
             yield indent.encode() + msgspec.json.format(_encode(record), indent=0) + comma
+
+
+def _is_of_records(value: object) -> bool:
+    """Whether an entry is opened up, a line for each of its records; a list of days stays on one."""
+    return isinstance(value, tuple) and all(isinstance(item, msgspec.Struct) for item in value)
 
 
 def _entries(record: msgspec.Struct) -> Iterator[tuple[str, Any]]:

@@ -9,7 +9,7 @@ from PySide6.QtCore import QSignalBlocker, Qt, Signal, Slot
 from PySide6.QtWidgets import QComboBox, QHBoxLayout, QLabel, QLineEdit, QWidget
 
 from spreadgui.book.changes import set_book
-from spreadgui.book.entries import EntryError, Value, date, words
+from spreadgui.book.entries import EntryError, Value, date, quoted, words
 from spreadgui.book.records import ValuationMethod
 from spreadgui.desk.look.theme import set_refused, set_tone
 from spreadgui.desk.workbench import Workbench
@@ -18,7 +18,10 @@ from spreadgui.valuation.typed import number_in_percent, percent_text
 
 
 class BookBar(QWidget):
-    """Title, valuation date, zero rate and method of the book. `told(sentence)` says what a person should know."""
+    """Title, valuation date, zero rate, method and gap tolerance of the book.
+
+    `told(sentence)` says what a person should know.
+    """
 
     told = Signal(str)
 
@@ -29,6 +32,8 @@ class BookBar(QWidget):
         self.date = _line("Valuation date, written as 2027-01-15", 96)
         self.rate = _line("Zero rate in per cent a year, continuous", 64)
         self.rate.setAlignment(Qt.AlignmentFlag.AlignRight)
+        self.tolerance = _line("Formula gap tolerance in per cent of the premium", 52)
+        self.tolerance.setAlignment(Qt.AlignmentFlag.AlignRight)
         self.method = QComboBox()
         self.method.setAccessibleName("Method of the values")
         self.method.setToolTip("The method that values and sensitivities of the book come from.")
@@ -39,6 +44,7 @@ class BookBar(QWidget):
         self.title.editingFinished.connect(self._take_title)
         self.date.editingFinished.connect(self._take_date)
         self.rate.editingFinished.connect(self._take_rate)
+        self.tolerance.editingFinished.connect(self._take_tolerance)
         self.method.activated.connect(self._take_method)
         workbench.followed.connect(self.show_book)
         self.show_book()
@@ -47,7 +53,12 @@ class BookBar(QWidget):
     def show_book(self) -> None:
         """Show the book as it is; an entry that is being typed and is wrong goes."""
         book = self._workbench.book
-        shown = {self.title: book.title, self.date: str(book.valuation_date), self.rate: percent_text(book.zero_rate)}
+        shown = {
+            self.title: book.title,
+            self.date: str(book.valuation_date),
+            self.rate: percent_text(book.zero_rate),
+            self.tolerance: percent_text(book.gap_tolerance),
+        }
         for line, text in shown.items():
             if line.text() != text:
                 line.setText(text)
@@ -64,6 +75,7 @@ class BookBar(QWidget):
             ("Valuation date", self.date, ""),
             ("Zero rate", self.rate, "%"),
             ("Value by", self.method, ""),
+            ("Gap tolerance", self.tolerance, "% of premium"),
         ):
             label = QLabel(words_)
             set_tone(label, "muted")
@@ -88,6 +100,10 @@ class BookBar(QWidget):
         self._take(self.rate, "zero_rate", number_in_percent, "set the zero rate")
 
     @Slot()
+    def _take_tolerance(self) -> None:
+        self._take(self.tolerance, "gap_tolerance", _tolerance, "set the gap tolerance")
+
+    @Slot()
     def _take_method(self) -> None:
         self._set("method", self.method.currentData(), "set the method")
 
@@ -106,6 +122,13 @@ class BookBar(QWidget):
     def _set(self, field: str, value: Value, change: str) -> None:
         if value is not None and value != getattr(self._workbench.book, field):
             self._workbench.apply(set_book(self._workbench.book, field, value, change))
+
+
+def _tolerance(text: str) -> float:
+    value = number_in_percent(text)
+    if value < 0.0:
+        raise EntryError(f"expected a tolerance of 0 % or more, got {quoted(text)}")
+    return value
 
 
 def _line(name: str, width: int) -> QLineEdit:

@@ -9,16 +9,22 @@ from collections.abc import Iterator
 from spreadgui.book.entries import is_delivery, quoted, shown
 from spreadgui.book.faults import Fault
 from spreadgui.book.records import Book, Market
-from spreadgui.market.contracts import resolve
+from spreadgui.market.contracts import Law, resolve
 from spreadgui.market.quotes import Quotes
+from spreadgui.market.strips import is_week
 
 # Ten times the square root of time in a year is beyond any market; such a figure is one in per cent.
 _HIGHEST_VOLATILITY = 10.0
 
 
 def faults_of(book: Book) -> list[Fault]:
-    """The faults of `book` in the order of its file: of the markets, the correlations, then of each position."""
-    return [*_market_faults(book), *_correlation_faults(book), *_position_faults(book)]
+    """The faults of `book` in the order of its file: its own, of markets, correlations, then positions."""
+    return [*_book_faults(book), *_market_faults(book), *_correlation_faults(book), *_position_faults(book)]
+
+
+def _book_faults(book: Book) -> Iterator[Fault]:
+    if not 0 <= book.gap_tolerance < math.inf:
+        yield Fault("gap_tolerance", f"is {book.gap_tolerance:g}; it cannot be below zero")
 
 
 def _market_faults(book: Book) -> Iterator[Fault]:
@@ -32,7 +38,18 @@ def _market_faults(book: Book) -> Iterator[Fault]:
         yield from _unit_faults(market, book.currency, where)
         if not 0 <= market.tie_strength < math.inf:
             yield Fault(f"{where}.tie_strength", f"is {market.tie_strength:g}; it cannot be below zero")
+        yield from _law_faults(market, where)
+        if not is_week(market.business_days):
+            said = quoted(market.business_days)
+            yield Fault(f"{where}.business_days", f"expected a 1 or a 0 for each day from Monday to Sunday, got {said}")
         yield from _mark_faults(market, where)
+
+
+def _law_faults(market: Market, where: str) -> Iterator[Fault]:
+    if not math.isfinite(market.shift):
+        yield Fault(f"{where}.shift", f"is {market.shift:g}, which is no amount")
+    elif market.shift and market.dynamics != "shifted lognormal":
+        yield Fault(f"{where}.shift", f"is {market.shift:g}; {market.dynamics} dynamics have none")
 
 
 def _mark_faults(market: Market, where: str) -> Iterator[Fault]:
@@ -46,7 +63,9 @@ def _mark_faults(market: Market, where: str) -> Iterator[Fault]:
         elif deliveries[mark.delivery] > 1:
             count = deliveries[mark.delivery]
             yield Fault(f"{place}.delivery", f"{shown(market.name)} has {count} marks for {mark.delivery}")
-        yield from _volatility_faults(mark.volatility, f"{place}.volatility")
+        highest = math.inf if market.dynamics == "normal" else _HIGHEST_VOLATILITY
+        yield from _volatility_faults(mark.volatility, f"{place}.volatility", highest)
+        yield from _volatility_faults(mark.daily_volatility, f"{place}.daily_volatility", highest)
 
 
 def _unit_faults(market: Market, currency: str, where: str) -> Iterator[Fault]:
@@ -61,12 +80,12 @@ def _unit_faults(market: Market, currency: str, where: str) -> Iterator[Fault]:
         )
 
 
-def _volatility_faults(volatility: float | None, where: str) -> Iterator[Fault]:
+def _volatility_faults(volatility: float | None, where: str, highest: float = _HIGHEST_VOLATILITY) -> Iterator[Fault]:
     if volatility is None:
         return
     if volatility < 0:
         yield Fault(where, f"is {volatility:g}; it cannot be below zero")
-    elif volatility > _HIGHEST_VOLATILITY:
+    elif volatility > highest:
         yield Fault(where, f"is {volatility:g}, which is {100 * volatility:g} %; a volatility of 45 % is written 0.45")
 
 
@@ -91,9 +110,11 @@ def _correlation_faults(book: Book) -> Iterator[Fault]:
 def _position_faults(book: Book) -> Iterator[Fault]:
     quotes = Quotes.of(book)
     for index, position in enumerate(book.positions):
-        for trouble in resolve(position, quotes, book.valuation_date, book.zero_rate).troubles:
+        resolved = resolve(position, quotes, book.valuation_date, book.zero_rate)
+        for trouble in resolved.troubles:
             yield Fault(f"positions[{index}].{trouble.field}", trouble.sentence)
+        highest = math.inf if resolved.law is Law.NORMAL else _HIGHEST_VOLATILITY
         for field in ("own_vol_long", "own_vol_short"):
             volatility = getattr(position, field)
             if volatility is not None and volatility >= 0:  # below zero the row is refused, and told of above
-                yield from _volatility_faults(volatility, f"positions[{index}].{field}")
+                yield from _volatility_faults(volatility, f"positions[{index}].{field}", highest)

@@ -7,8 +7,12 @@ import math
 from dataclasses import dataclass, field
 from enum import IntEnum
 
-from spreadgui.book.records import Position
+import numpy as np
+
+from spreadgui.book.entries import is_delivery
+from spreadgui.book.records import Market, Position
 from spreadgui.market.quotes import Quotes, UnknownMarkError
+from spreadgui.market.strips import Strip, calendar_fault, exercises, strip_of
 from spreadgui.market.time import discount_factor, years
 
 _NAN = math.nan
@@ -20,6 +24,13 @@ class Shape(IntEnum):
     SPREAD = 0
     LONG_LEG_ONLY = 1
     SHORT_LEG_ONLY = 2
+
+
+class Law(IntEnum):
+    """How the forwards of a position move: with their shift added they are lognormal, or they are normal themselves."""
+
+    LOGNORMAL = 0
+    NORMAL = 1
 
 
 class Readiness(IntEnum):
@@ -43,18 +54,24 @@ class Trouble:
 class ResolvedPosition:
     """The inputs of one position; NaN where the position has none or it could not be found.
 
-    Forwards are the markets' own, before the ratios. `years` may be below zero when the option is past.
+    Forwards and shifts are the markets' own, before the ratios; under a normal law so are the volatilities, which are
+    absolute then. `years` may be below zero when the option is past. A position with a `strip` is exercised as that
+    says; its `years` and `discount` are the means over the days.
     """
 
     shape: Shape = Shape.SPREAD
+    law: Law = Law.LOGNORMAL
     unit: str = ""
     forward_long: float = _NAN
     forward_short: float = _NAN
     vol_long: float = _NAN
     vol_short: float = _NAN
     correlation: float = _NAN
+    shift_long: float = 0.0
+    shift_short: float = 0.0
     years: float = _NAN
     discount: float = _NAN
+    strip: Strip | None = None
     troubles: list[Trouble] = field(default_factory=list)
 
 
@@ -65,8 +82,13 @@ def resolve(position: Position, quotes: Quotes, valuation_date: datetime.date, z
         _incomplete(resolved, "quantity", "the quantity is missing")
     _resolve_leg(resolved, position, quotes, "long")
     _resolve_leg(resolved, position, quotes, "short")
+    _resolve_law(resolved, position, quotes)
     _resolve_correlation(resolved, position, quotes)
-    _resolve_time(resolved, position, valuation_date, zero_rate)
+    if position.exercise == "once":
+        _resolve_time(resolved, position, valuation_date, zero_rate)
+    else:
+        _resolve_strip(resolved, position, quotes, valuation_date)
+        _resolve_strip_time(resolved, position, zero_rate)
     _check_numbers(resolved, position)
     resolved.troubles.sort(key=lambda trouble: Position.__struct_fields__.index(trouble.field))
     return resolved
@@ -138,6 +160,26 @@ def _take_unit(resolved: ResolvedPosition, quotes: Quotes, leg: str) -> None:
         resolved.unit = quotes.market(leg).unit
 
 
+def _markets(position: Position, quotes: Quotes) -> dict[str, Market]:
+    """The markets of the legs that name one, by side."""
+    legs = {side: getattr(position, f"{side}_leg") for side in ("long", "short")}
+    return {side: quotes.market(leg) for side, leg in legs.items() if leg and _has_market(quotes, leg)}
+
+
+def _resolve_law(resolved: ResolvedPosition, position: Position, quotes: Quotes) -> None:
+    """Shifted lognormal and lognormal legs go together: the second has a shift of zero. A normal one goes with a normal
+    one only. A leg with own marks and no market moves as the other leg does."""
+    markets = _markets(position, quotes)
+    laws = {side: Law.NORMAL if market.dynamics == "normal" else Law.LOGNORMAL for side, market in markets.items()}
+    if len(set(laws.values())) > 1 and position.kind != "forward":
+        first, second = (f"{markets[side].name} is {markets[side].dynamics}" for side in ("long", "short"))
+        _refused(resolved, "short_leg", f"{first} and {second}: no formula prices the two together")
+    resolved.law = next(iter(laws.values()), Law.LOGNORMAL)
+    for side, market in markets.items():
+        if market.dynamics == "shifted lognormal":
+            setattr(resolved, f"shift_{side}", market.shift)
+
+
 def _resolve_correlation(resolved: ResolvedPosition, position: Position, quotes: Quotes) -> None:
     if resolved.shape is not Shape.SPREAD:
         return
@@ -188,16 +230,60 @@ def _resolve_time(
         _refused(resolved, "expiry", f"the zero rate {zero_rate:g} gives no discount factor for this expiry")
 
 
+def _resolve_strip(
+    resolved: ResolvedPosition, position: Position, quotes: Quotes, valuation_date: datetime.date
+) -> None:
+    """The days of a strip, which both legs must deliver in one month."""
+    months = {side: getattr(position, f"{side}_delivery") for side in ("long", "short")}
+    months = {side: month for side, month in months.items() if month and is_delivery(month)}
+    if not months:
+        if not _has_leg_trouble(resolved):
+            _incomplete(resolved, "long_delivery", "a strip needs a delivery month, whose days it is exercised for")
+        return
+    if len(set(months.values())) > 1:
+        _refused(resolved, "short_delivery", "a strip needs both legs in one delivery month")
+        return
+    delivery, markets = next(iter(months.values())), list(_markets(position, quotes).values())
+    if reason := calendar_fault(markets):
+        _refused(resolved, "exercise", reason)
+        return
+    days, expiries, of_all = exercises(delivery, position.exercise, markets, valuation_date)
+    if not len(days):
+        past = "has no business day" if not of_all else f"was all exercised before the valuation date {valuation_date}"
+        _refused(resolved, "exercise", f"the strip over {delivery} {past}")
+        return
+    daily = tuple(_daily_volatility(resolved, position, quotes, side) for side in ("long", "short"))
+    resolved.strip = strip_of(delivery, days, expiries, of_all, valuation_date, (daily[0], daily[1]))
+
+
+def _daily_volatility(resolved: ResolvedPosition, position: Position, quotes: Quotes, side: str) -> float:
+    """The mark's volatility inside the month; NaN where there is none, so that the leg's other one goes on."""
+    leg, delivery = getattr(position, f"{side}_leg"), getattr(position, f"{side}_delivery")
+    try:
+        daily = quotes.mark(leg, delivery).daily_volatility if leg else None
+    except UnknownMarkError:
+        return _NAN
+    if daily is not None and daily < 0:
+        _refused(resolved, f"{side}_delivery", f"the daily volatility of {leg} for {delivery} is {daily:g}, below zero")
+    return _NAN if daily is None else daily
+
+
+def _resolve_strip_time(resolved: ResolvedPosition, position: Position, zero_rate: float) -> None:
+    if resolved.strip is None:
+        return
+    discounts = [discount_factor(zero_rate, time) for time in resolved.strip.years.tolist()]
+    resolved.years = float(np.mean(resolved.strip.years))
+    resolved.discount = float(np.mean(discounts))
+    if not math.isfinite(resolved.discount):
+        _refused(resolved, "exercise", f"the zero rate {zero_rate:g} gives no discount factor for this strip")
+
+
 def _check_numbers(resolved: ResolvedPosition, position: Position) -> None:
-    """What a record can hold and a lognormal formula cannot take."""
+    """What a record can hold and a formula cannot take."""
     for side in ("long", "short"):
-        forward, vol = getattr(resolved, f"forward_{side}"), getattr(resolved, f"vol_{side}")
-        if forward <= 0 and position.kind != "forward":
-            _refused(
-                resolved,
-                f"own_forward_{side}",
-                f"the {side} forward is {forward:g}; lognormal formulas need one above zero",
-            )
+        vol = getattr(resolved, f"vol_{side}")
+        if position.kind != "forward" and resolved.law is Law.LOGNORMAL:
+            _check_above_zero(resolved, side)
         if vol < 0:
             _refused(resolved, f"own_vol_{side}", f"the {side} volatility is {vol:g}, below zero")
         if not getattr(position, f"{side}_ratio") > 0:
@@ -208,6 +294,18 @@ def _check_numbers(resolved: ResolvedPosition, position: Position) -> None:
         _refused(resolved, "own_correlation", f"the correlation is {resolved.correlation:g}, beyond 1 or −1")
     if position.quantity is not None and position.quantity < 0:
         _refused(resolved, "quantity", f"the quantity is {position.quantity:g}; let the side say short instead")
+
+
+def _check_above_zero(resolved: ResolvedPosition, side: str) -> None:
+    forward, shift = getattr(resolved, f"forward_{side}"), getattr(resolved, f"shift_{side}")
+    if forward + shift <= 0:
+        _refused(
+            resolved,
+            f"own_forward_{side}",
+            f"the {side} forward is {forward:g} with its shift of {shift:g}; the two must come to more than zero"
+            if shift
+            else f"the {side} forward is {forward:g}; lognormal formulas need one above zero",
+        )
 
 
 def _trouble_of(resolved: ResolvedPosition, error: UnknownMarkError, where: str) -> None:

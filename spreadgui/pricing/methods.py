@@ -33,7 +33,11 @@ def strike_of_zero(strike: ArrayLike) -> NDArray[np.bool_]:
 
 @dataclass(frozen=True)
 class Method:
-    """One published method; its formulas are in the module of this room that has its key for a name."""
+    """One published method; its formulas are in the module of this room that has its key for a name.
+
+    `law` is what it takes the forwards to be: "lognormal", which with `shifted` serves shifted ones as well, or
+    "normal". A `reference` is exact for its law, or as good as.
+    """
 
     key: str
     name: str
@@ -41,6 +45,7 @@ class Method:
     applies: str
     accepts: Accepts = any_strike
     reference: bool = False
+    law: str = "lognormal"
 
     def value(self, *arguments: ArrayLike, executor: Executor | None = None, **named: Any) -> Array:
         """The discounted value; arguments, by place or by name, are those of the method's own `value`."""
@@ -90,7 +95,18 @@ METHODS: tuple[Method, ...] = (
         applies="The reference value under two lognormal forwards, for every strike.",
         reference=True,
     ),
+    Method(
+        key="bachelier",
+        name="Bachelier",
+        source="L. Bachelier, Annales scientifiques de l'Ecole normale superieure 17 (1900) 21-86",
+        applies="Exact under two normal forwards, of either sign, with absolute volatilities.",
+        reference=True,
+        law="normal",
+    ),
 )
+
+LOGNORMAL_METHODS = tuple(method for method in METHODS if method.law == "lognormal")
+NORMAL_METHODS = tuple(method for method in METHODS if method.law == "normal")
 
 _BY_KEY = {method.key: method for method in METHODS}
 

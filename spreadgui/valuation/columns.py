@@ -1,138 +1,47 @@
 """The column register: every column of the grid and of the value table, each declared once.
 
-A column says how it is read from the slate and the live results (`numbers` or `words`), what its screen heading, unit
-and scaling are, and which field of the position typing into it sets. Input columns take their reading rules from
+A column says how it is read from the slate and the live results, what its screen heading, unit and scaling are, and
+which field of the position typing into it sets (`column.Column`). Input columns take their reading rules from
 `book.fields`; a new computed column is one more entry in COLUMNS.
 """
 
 from __future__ import annotations
 
-import math
-from collections.abc import Callable
-from dataclasses import dataclass
-
 import numpy as np
 
-from spreadgui.book.fields import BY_KEY, Field
+from spreadgui.book.fields import BY_KEY
 from spreadgui.pricing.methods import METHODS, Method
-from spreadgui.pricing.methods import method as method_of
-from spreadgui.valuation.results import LiveResults, State
-from spreadgui.valuation.shown import trimmed_text
-from spreadgui.valuation.slate import FloatArray, RowArray, Slate
-
-Rows = slice | RowArray
-Numbers = Callable[[Slate, LiveResults, Rows], FloatArray]
-Words = Callable[[Slate, LiveResults, int], str]
-ALL_ROWS = slice(None)
-
-
-@dataclass(frozen=True)
-class Column:
-    """One column. Exactly one of `numbers` (some rows at once, code units) and `words` (one cell) reads it.
-
-    On screens a number is multiplied by `scale` and shown with `decimals` (at least `least_decimals` where those
-    differ). `computed` columns show the state of their row when it is not current. `own` columns show what the row
-    uses and, typed into, set the row's own mark.
-    """
-
-    key: str
-    heading: str
-    help: str
-    unit: str = ""
-    field: Field | None = None
-    numbers: Numbers | None = None
-    words: Words | None = None
-    scale: float = 1.0
-    decimals: int = 2
-    least_decimals: int | None = None
-    computed: bool = False
-    pinned: bool = False
-    on_screen: bool = True
-
-    @property
-    def numeric(self) -> bool:
-        return self.numbers is not None
-
-    @property
-    def own(self) -> bool:
-        """Whether typing into the column sets an own mark that wins over the book's."""
-        return self.field is not None and self.field.key.startswith("own_")
-
-    def shown(self, value: float) -> str:
-        """A number of this column as the screen writes it."""
-        least = self.decimals if self.least_decimals is None else self.least_decimals
-        return trimmed_text(value * self.scale, self.decimals, least)
-
-
-def _field_words(key: str) -> Words:
-    entry = BY_KEY[key].entry
-    return lambda slate, _results, row: entry.text(getattr(slate.book.positions[row], key))
-
-
-def _input(key: str) -> Numbers:
-    return lambda slate, _results, rows: slate.values(key)[rows]
-
-
-def _output(key: str) -> Numbers:
-    return lambda _slate, results, rows: results.values(key)[rows]
-
-
-def _for_position(key: str) -> Numbers:
-    return lambda slate, results, rows: slate.values("quantity")[rows] * results.values(key)[rows]
-
-
-def _gap(key: str) -> Numbers:
-    return lambda _slate, results, rows: results.values(key)[rows] - results.values("yardstick")[rows]
-
-
-def _gap_share(key: str) -> Numbers:
-    def share(slate: Slate, results: LiveResults, rows: Rows) -> FloatArray:
-        premium = results.values("yardstick")[rows]
-        with np.errstate(divide="ignore", invalid="ignore"):
-            found: FloatArray = np.where(premium > 0, _gap(key)(slate, results, rows) / premium, np.nan)
-        return found
-
-    return share
-
-
-def _rate_sensitivity(slate: Slate, results: LiveResults, rows: Rows) -> FloatArray:
-    """Forwards stand still as the rate moves, so only discounting tells: minus the time, as a share of the value."""
-    found: FloatArray = -slate.values("years")[rows] * slate.values("quantity")[rows] * results.values("value")[rows]
-    return found
-
-
-def _worded(key: str, *, unit: str = "", pinned: bool = False) -> Column:
-    field = BY_KEY[key]
-    return Column(key, field.heading, field.help, unit, field, words=_field_words(key), pinned=pinned)
-
-
-def _entered(key: str, unit: str, decimals: int, least: int, numbers: Numbers) -> Column:
-    field = BY_KEY[key]
-    return Column(key, field.heading, field.help, unit, field, numbers=numbers, decimals=decimals, least_decimals=least)
-
-
-def _own_mark(key: str, field_key: str, unit: str, scale: float, decimals: int, least: int) -> Column:
-    field = BY_KEY[field_key]
-    return Column(
-        key, field.heading, field.help, unit, field,
-        numbers=_input(key), scale=scale, decimals=decimals, least_decimals=least,
-    )  # fmt: skip
-
-
-def _computed(
-    key: str, heading: str, help: str, numbers: Numbers, unit: str = "", *, scale: float = 1.0, decimals: int = 4,
-    pinned: bool = False, on_screen: bool = True,
-) -> Column:  # fmt: skip
-    return Column(
-        key, heading, help, unit, numbers=numbers, scale=scale, decimals=decimals,
-        computed=True, pinned=pinned, on_screen=on_screen,
-    )  # fmt: skip
+from spreadgui.valuation.column import Column
+from spreadgui.valuation.column_making import (
+    computed,
+    entered,
+    expiry_words,
+    for_position,
+    gap,
+    gap_share,
+    implied_distance,
+    implied_word,
+    of_input,
+    of_output,
+    own_mark,
+    position_premium_gap,
+    premium_gap,
+    reason,
+    row_method,
+    state_word,
+    worded,
+)
+from spreadgui.valuation.trust import row_words
 
 
 def _by_method() -> list[Column]:
     return [
-        _computed(
-            method.key, method.name, f"Unit value by {method.name}. {method.applies}", _output(method.key), "unit value"
+        computed(
+            method.key,
+            method.name,
+            f"Unit value by {method.name}. {method.applies}",
+            of_output(method.key),
+            "unit value",
         )
         for method in METHODS
     ]
@@ -146,13 +55,14 @@ def _gaps_of(method: Method) -> list[Column]:
     """In money and in per cent of premium; the screen has the two methods that a desk is most likely to quote."""
     shown = method.key in ("kirk", "bjerksund_stensland")
     about = f"Formula gap: the unit value by {method.name} minus the Yardstick's"
-    gap, share = f"{method.key}_gap", f"{method.key}_gap_share"
+    money, share = f"{method.key}_gap", f"{method.key}_gap_share"
     heading = f"{method.name} gap"
     return [
-        _computed(gap, heading, f"{about}.", _gap(method.key), "unit value", decimals=5, on_screen=shown),
-        _computed(
-            share, heading, f"{about}, in per cent of the Yardstick's.", _gap_share(method.key), "% of premium",
-            scale=100.0, decimals=3, on_screen=shown,
+        computed(money, heading, f"{about}.", gap(method.key), "unit value", decimals=5, on_screen=shown,
+                 gap_of=method.key),
+        computed(
+            share, heading, f"{about}, in per cent of the Yardstick's.", gap_share(method.key), "% of premium",
+            scale=100.0, decimals=3, on_screen=shown, gap_of=method.key,
         ),
     ]  # fmt: skip
 
@@ -164,8 +74,10 @@ _SENSITIVITIES = (
     ("gamma_long", "Gamma long", 1.0, "units per 1.00", "Change of the long delta per 1.00 of the long forward."),
     ("gamma_short", "Gamma short", 1.0, "units per 1.00", "Change of the short delta per 1.00 of the short forward."),
     ("gamma_cross", "Cross-gamma", 1.0, "units per 1.00", "Change of the long delta per 1.00 of the short forward."),
-    ("vega_long", "Vega long", 0.01, "per 1 vol point", "Change of value per point of the long leg's volatility."),
-    ("vega_short", "Vega short", 0.01, "per 1 vol point", "Change of value per point of the short leg's volatility."),
+    ("vega_long", "Vega long", 0.01, "per 1 vol point",
+     "Change of value per point of the long leg's volatility, per 1.00 of an absolute one."),
+    ("vega_short", "Vega short", 0.01, "per 1 vol point",
+     "Change of value per point of the short leg's volatility, per 1.00 of an absolute one."),
     ("correlation_sensitivity", "Correlation sensitivity", 0.01, "per 0.01", "Change of value per 0.01 of it."),
     ("theta", "Theta", 1 / 365, "per calendar day",
      "Change of value as one calendar day passes, forwards, volatilities and zero rate standing still."),
@@ -174,11 +86,11 @@ _SENSITIVITIES = (
 
 def _position_sensitivities() -> list[Column]:
     return [
-        _computed(
+        computed(
             f"position_{key}",
             heading,
             f"{about} For the whole position, by the book's method.",
-            _for_position(key),
+            for_position(key),
             unit,
             scale=scale,
             decimals=2 if key.startswith("gamma") else 0,
@@ -189,11 +101,11 @@ def _position_sensitivities() -> list[Column]:
 
 def _unit_sensitivities() -> list[Column]:
     return [
-        _computed(
+        computed(
             key,
             heading,
             f"{about} Per unit of payoff, by the book's method.",
-            _output(key),
+            of_output(key),
             unit,
             scale=scale,
             decimals=5,
@@ -203,88 +115,105 @@ def _unit_sensitivities() -> list[Column]:
     ]
 
 
-def _state_word(_slate: Slate, results: LiveResults, row: int) -> str:
-    state = State(int(results.state[row]))
-    return state.word
+def _daily_vegas() -> list[Column]:
+    return [
+        computed(
+            f"{whole}daily_vega_{side}", f"Daily vega {side}",
+            f"Change of value per point of the {side} leg's daily volatility, which rules inside the delivery month of "
+            f"a strip. {'For the whole position' if whole else 'Per unit of payoff'}.",
+            (for_position if whole else of_output)(f"daily_vega_{side}"),
+            "per 1 vol point", scale=0.01, decimals=0 if whole else 5, on_screen=False,
+        )
+        for side in ("long", "short")
+        for whole in ("", "position_")
+    ]  # fmt: skip
 
 
-def _reason(_slate: Slate, results: LiveResults, row: int) -> str:
-    return results.reason(row)
-
-
-def _book_method(slate: Slate, _results: LiveResults, _row: int) -> str:
-    return method_of(slate.book.method).name
+def _implied() -> list[Column]:
+    """What the quoted premium says."""
+    return [
+        computed("premium_gap", "Premium less value", "The quoted premium less the unit value.", premium_gap,
+                 "unit value"),
+        computed("position_premium_gap", "Premium less value",
+                 "Signed quantity times the quoted premium less the unit value.", position_premium_gap, "{currency}",
+                 decimals=0),
+        computed("implied_correlation", "Implied correlation",
+                 "The correlation at which the Yardstick (for normal forwards Bachelier) gives the quoted premium.",
+                 of_output("implied_correlation"), "%", scale=100.0, decimals=2),
+        computed("implied_distance", "Implied less marked",
+                 "The implied correlation less the one the row is valued with.", implied_distance, "points",
+                 scale=100.0, decimals=2),
+        computed("implied_correlation_error", "Implied, error bar",
+                 "How far the implied correlation may be off, either way: the last digit quoted over the sensitivity.",
+                 of_output("implied_correlation_error"), "± points", scale=100.0, decimals=2),
+        Column("implied_status", "Implied status",
+               "Solved; below the floor or above the ceiling of any correlation; or not identified by the premium.",
+               words=implied_word, computed=True),
+    ]  # fmt: skip
 
 
 COLUMNS: tuple[Column, ...] = (
-    _worded("name", pinned=True),
-    _computed("position_value", "Value", "Quantity times unit value; below zero for what the desk owes.",
-              _for_position("value"), "{currency}", decimals=0, pinned=True),
-    _worded("side"),
-    _worded("kind"),
-    _entered("quantity", "payoff units", 3, 0, lambda slate, _results, rows: np.abs(slate.values("quantity")[rows])),
+    worded("name", pinned=True),
+    computed("position_value", "Value", "Quantity times unit value; below zero for what the desk owes.",
+             for_position("value"), "{currency}", decimals=0, pinned=True),
+    worded("side"),
+    worded("kind"),
+    entered("quantity", "payoff units", 3, 0, lambda slate, _results, rows: np.abs(slate.values("quantity")[rows])),
     Column("unit", "Unit", "What the payoff is quoted in: the unit of the long leg's market.",
            words=lambda slate, _results, row: slate.units[row]),
-    _worded("long_leg"),
-    _worded("long_delivery"),
-    _entered("long_ratio", "×", 6, 2, _input("ratio_long")),
-    _worded("short_leg"),
-    _worded("short_delivery"),
-    _entered("short_ratio", "×", 6, 2, _input("ratio_short")),
-    _entered("strike", "payoff unit", 6, 2, _input("strike")),
-    _worded("expiry"),
-    _own_mark("forward_long", "own_forward_long", "market unit", 1.0, 6, 2),
-    _own_mark("forward_short", "own_forward_short", "market unit", 1.0, 6, 2),
-    _own_mark("vol_long", "own_vol_long", "% a year", 100.0, 6, 1),
-    _own_mark("vol_short", "own_vol_short", "% a year", 100.0, 6, 1),
-    _own_mark("correlation", "own_correlation", "%", 100.0, 6, 1),
+    worded("long_leg"),
+    worded("long_delivery"),
+    entered("long_ratio", "×", 6, 2, of_input("ratio_long")),
+    worded("short_leg"),
+    worded("short_delivery"),
+    entered("short_ratio", "×", 6, 2, of_input("ratio_short")),
+    entered("strike", "payoff unit", 6, 2, of_input("strike")),
+    Column("expiry", BY_KEY["expiry"].heading, BY_KEY["expiry"].help, field=BY_KEY["expiry"], words=expiry_words),
+    worded("exercise"),
+    own_mark("forward_long", "own_forward_long", "market unit", 1.0, 6, 2),
+    own_mark("forward_short", "own_forward_short", "market unit", 1.0, 6, 2),
+    own_mark("vol_long", "own_vol_long", "% a year", 100.0, 6, 1),
+    own_mark("vol_short", "own_vol_short", "% a year", 100.0, 6, 1),
+    own_mark("correlation", "own_correlation", "%", 100.0, 6, 1),
     Column("years", "Years", "Time from the valuation date to the expiry, actual days over 365.", "ACT/365F",
-           numbers=_input("years"), decimals=3),
+           numbers=of_input("years"), decimals=3),
     Column("discount", "Discount factor", "Value today of one unit of money at the expiry.", "",
-           numbers=_input("discount"), decimals=5),
+           numbers=of_input("discount"), decimals=5),
     *_by_method(),
+    computed("yardstick_error", "Yardstick error",
+             "What the Yardstick knows of its own error: its unit value is off by no more.",
+             of_output("yardstick_error"), "unit value", decimals=14, on_screen=False),
     *_gaps(),
+    Column("formula_check", "Formula check",
+           "The closed forms whose gap is beyond the book's tolerance, and whether the value rests on one.",
+           words=row_words, computed=True),
+    entered("quoted_premium", "unit value", 6, 2, of_input("quoted_premium")),
+    *_implied(),
     *_position_sensitivities(),
-    _computed("position_rate_sensitivity", "Rate sensitivity",
-              "Change of value per 0.01 of the zero rate, for the whole position; the forwards stand still.",
-              _rate_sensitivity, "per 0.01", scale=0.01, decimals=0),
+    computed("position_rate_sensitivity", "Rate sensitivity",
+             "Change of value per 0.01 of the zero rate, for the whole position; the forwards stand still.",
+             for_position("rate_sensitivity"), "per 0.01", scale=0.01, decimals=0),
     *_unit_sensitivities(),
-    _worded("note"),
-    Column("state", "State", "Current, pricing, incomplete or refused.", words=_state_word),
-    Column("reason", "Reason", "Why the row is incomplete or refused.", words=_reason),
-    Column("method", "Method", "The method of the value and the sensitivities.", words=_book_method, on_screen=False),
+    *_daily_vegas(),
+    worded("note"),
+    Column("state", "State", "Current, pricing, incomplete or refused.", words=state_word),
+    Column("reason", "Reason", "Why the row is incomplete or refused.", words=reason),
+    Column("method", "Method", "The method of the value and the sensitivities.", words=row_method, on_screen=False),
 )  # fmt: skip
 
 BY_COLUMN_KEY: dict[str, Column] = {column.key: column for column in COLUMNS}
 SCREEN_COLUMNS: tuple[Column, ...] = tuple(column for column in COLUMNS if column.on_screen)
 VALUE_TABLE: tuple[str, ...] = (
     "name", "side", "kind", "quantity", "unit", "long_leg", "long_delivery", "long_ratio",
-    "short_leg", "short_delivery", "short_ratio", "strike", "expiry",
+    "short_leg", "short_delivery", "short_ratio", "strike", "expiry", "exercise",
     "forward_long", "forward_short", "vol_long", "vol_short", "correlation", "years", "discount",
-    *(method.key for method in METHODS),
+    *(method.key for method in METHODS), "yardstick_error",
     "method", "position_value",
     *(key for key, *_ in _SENSITIVITIES),
     *(f"position_{key}" for key, *_ in _SENSITIVITIES), "position_rate_sensitivity",
+    *(f"{whole}daily_vega_{side}" for whole in ("", "position_") for side in ("long", "short")),
     *(f"{method.key}_gap{kind}" for method in METHODS if not method.reference for kind in ("", "_share")),
+    "formula_check", "quoted_premium", "premium_gap", "position_premium_gap", "implied_correlation",
+    "implied_distance", "implied_correlation_error", "implied_status",
     "state", "reason",
 )  # fmt: skip
-
-
-def exact_texts(column: Column, slate: Slate, results: LiveResults, rows: range) -> list[str]:
-    """The cells of `rows` for files: numbers in code units to the last digit, empty where there is none."""
-    if column.numbers is None:
-        return _words_of(column, slate, results, rows)
-    numbers = column.numbers(slate, results, slice(rows.start, rows.stop)).tolist()
-    return [repr(number) if math.isfinite(number) else "" for number in numbers]
-
-
-def screen_texts(column: Column, slate: Slate, results: LiveResults, rows: range) -> list[str]:
-    """The cells of `rows` for screens; one without a number is empty, its state being told beside it."""
-    if column.numbers is None:
-        return _words_of(column, slate, results, rows)
-    return [column.shown(number) for number in column.numbers(slate, results, slice(rows.start, rows.stop)).tolist()]
-
-
-def _words_of(column: Column, slate: Slate, results: LiveResults, rows: range) -> list[str]:
-    assert column.words is not None
-    return [column.words(slate, results, row) for row in rows]

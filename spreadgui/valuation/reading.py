@@ -2,22 +2,24 @@
 
 from __future__ import annotations
 
+import datetime
 from dataclasses import dataclass
 
 import numpy as np
 
-from spreadgui.market.contracts import Readiness, Shape
+from spreadgui.market.contracts import Law, Readiness, Shape
 from spreadgui.market.quotes import UnknownMarkError, quantity_unit
-from spreadgui.pricing.methods import METHODS, Method
-from spreadgui.pricing.methods import method as method_of
+from spreadgui.pricing.methods import LOGNORMAL_METHODS, NORMAL_METHODS, Method
 from spreadgui.valuation.columns import BY_COLUMN_KEY
-from spreadgui.valuation.price import price_rows
-from spreadgui.valuation.results import SENSITIVITIES, State, output_row
+from spreadgui.valuation.exercises import expand
+from spreadgui.valuation.group import STRIKE_INPUTS, formula_strike
+from spreadgui.valuation.naming import value_method
+from spreadgui.valuation.price import price_lines, price_rows
+from spreadgui.valuation.results import IMPLIED_WORDS, SENSITIVITIES, State, output_row
 from spreadgui.valuation.shown import trimmed_text
-from spreadgui.valuation.slate import KINDS, FloatArray, Slate
+from spreadgui.valuation.slate import INPUTS, KINDS, FloatArray, Slate
+from spreadgui.valuation.trust import LEAST_PREMIUM
 
-# Below this share of the larger leg the Yardstick's own error (1e-10 of it) would be more than a per cent of a premium.
-LEAST_PREMIUM = 1e-8
 # What stands for the currency's units where a market's unit does not say what is counted.
 NAMELESS_UNIT = "units"
 _NAN = float("nan")
@@ -64,6 +66,42 @@ class SensitivityReading:
 
 
 @dataclass(frozen=True)
+class DayReading:
+    """One day of a strip: its part of the signed quantity, what its formula is given, and what comes of it.
+
+    `unit_value` is for one unit of payoff of this day, `position_value` and the deltas for its part of the quantity.
+    """
+
+    day: datetime.date
+    expiry: datetime.date
+    quantity: float
+    years: float
+    vol_long: float
+    vol_short: float
+    correlation: float
+    unit_value: float
+    position_value: float
+    delta_long: float
+    delta_short: float
+
+
+@dataclass(frozen=True)
+class QuoteReading:
+    """What a quoted premium says: in payoff units, the correlations as decimals, NaN where there is none.
+
+    `gap` is the premium less the unit value, `position_gap` the same for the signed quantity, in the book's money.
+    """
+
+    premium: float
+    gap: float
+    position_gap: float
+    implied: float
+    error: float
+    marked: float
+    status: str
+
+
+@dataclass(frozen=True)
 class Reading:
     """All that the panel shows of one position, stamped with the revision it was read from.
 
@@ -72,8 +110,8 @@ class Reading:
     the name of what `unit_value` and the sensitivities come from: the book's method, Black-76 for one leg, the
     discounted difference for a forward. `intrinsic` is NaN for a forward, which has none. `sensitivities` are plain
     derivatives of the unit value in the order of results.SENSITIVITIES, `sensitivity_rows` the same as screens show
-    them. Where the position could not be priced `reason` is set, `state` says whether it is incomplete or refused,
-    and no number may be relied upon.
+    them. A strip has its `days`, a position with a quoted premium its `quote`. Where the position could not be priced
+    `reason` is set, `state` says whether it is incomplete or refused, and no number may be relied upon.
     """
 
     revision: int
@@ -92,6 +130,10 @@ class Reading:
     kind: str = "call"
     quantity_unit: str = ""
     sensitivity_rows: tuple[SensitivityReading, ...] = ()
+    days: tuple[DayReading, ...] = ()
+    quote: QuoteReading | None = None
+    # Whether the volatilities are absolute, each in its market's unit.
+    absolute_vols: bool = False
 
     @property
     def time_value(self) -> float:
@@ -125,7 +167,7 @@ def read_position(slate: Slate, row: int) -> Reading:
         subject=_subject(slate, row),
         unit=slate.units[row],
         currency=slate.book.currency,
-        method=_method_name(slate, row),
+        method=value_method(slate, row),
         quantity=float(slate.values("quantity")[row]),
         unit_value=float(outputs[output_row("value")]),
         intrinsic=intrinsic_value(slate, row),
@@ -134,6 +176,52 @@ def read_position(slate: Slate, row: int) -> Reading:
         kind=position.kind,
         quantity_unit=quantity_unit(slate.units[row]),
         sensitivity_rows=tuple(_sensitivity_reading(slate, row, key, outputs) for key in SENSITIVITIES),
+        days=_day_readings(slate, row) if row in slate.strips else (),
+        quote=_quote_reading(slate, row, outputs),
+        absolute_vols=bool(slate.law[row] == Law.NORMAL),
+    )
+
+
+def _day_readings(slate: Slate, row: int) -> tuple[DayReading, ...]:
+    strip, lines = slate.strips[row], expand(slate, np.array([row]))
+    outputs = price_lines(slate, lines)
+    given = dict(zip(INPUTS, lines.inputs.tolist(), strict=True))
+    quantities = (lines.share * slate.values("quantity")[row]).tolist()
+    unit_value, delta_long, delta_short = (
+        outputs[output_row(key)].tolist() for key in ("value", "delta_long", "delta_short")
+    )
+    parts = zip(strip.days.tolist(), strip.expiries.tolist(), quantities, strict=True)
+    return tuple(
+        DayReading(
+            day=day,
+            expiry=expiry,
+            quantity=quantity,
+            years=given["years"][line],
+            vol_long=given["vol_long"][line],
+            vol_short=given["vol_short"][line],
+            correlation=given["correlation"][line],
+            unit_value=unit_value[line],
+            position_value=quantity * unit_value[line],
+            delta_long=quantity * delta_long[line],
+            delta_short=quantity * delta_short[line],
+        )
+        for line, (day, expiry, quantity) in enumerate(parts)
+    )
+
+
+def _quote_reading(slate: Slate, row: int, outputs: FloatArray) -> QuoteReading | None:
+    premium = float(slate.values("quoted_premium")[row])
+    if not np.isfinite(premium):
+        return None
+    gap, status = premium - float(outputs[output_row("value")]), float(outputs[output_row("implied_status")])
+    return QuoteReading(
+        premium,
+        gap,
+        float(slate.values("quantity")[row]) * gap,
+        float(outputs[output_row("implied_correlation")]),
+        float(outputs[output_row("implied_correlation_error")]),
+        float(slate.values("correlation")[row]),
+        IMPLIED_WORDS[int(status)] if np.isfinite(status) else "no correlation to imply",
     )
 
 
@@ -147,7 +235,9 @@ def intrinsic_value(slate: Slate, row: int) -> float:
         return _NAN
     long, short = _folded_forwards(slate, row)
     above = long - short - float(slate.values("strike")[row])
-    return float(slate.values("discount")[row]) * max(above if kind == "call" else -above, 0.0)
+    lines = expand(slate, np.array([row]))  # a strip's days are discounted each for itself
+    discount = float(np.sum(lines.share * lines.inputs[INPUTS.index("discount")]))
+    return discount * max(above if kind == "call" else -above, 0.0)
 
 
 def _folded_forwards(slate: Slate, row: int) -> tuple[float, float]:
@@ -161,44 +251,48 @@ def _folded_forwards(slate: Slate, row: int) -> tuple[float, float]:
 
 def _subject(slate: Slate, row: int) -> str:
     position = slate.book.positions[row]
-    words = [position.name or f"Position {row + 1}", f"{position.side} {position.kind}"]
+    strip = slate.strips.get(row)
+    kind = f"{position.side} {position.kind}" if strip is None else f"{position.side} {position.kind} strip"
+    words = [position.name or f"Position {row + 1}", kind]
     if position.quantity is not None:
         quantity = trimmed_text(abs(position.quantity), 3)
         words.append(f"{quantity} {quantity_unit(slate.units[row])}".strip())
+    if strip is not None:
+        words.append(f"{len(strip)} {'business days' if position.exercise == 'business days' else 'days'} to come")
     return " · ".join(words)
-
-
-def _method_name(slate: Slate, row: int) -> str:
-    if KINDS[slate.kind[row]] == "forward":
-        return "Discounted difference"
-    return method_of(slate.book.method).name if slate.shape[row] == Shape.SPREAD else "Black-76"
 
 
 def _method_readings(slate: Slate, row: int, outputs: FloatArray) -> tuple[MethodReading, ...]:
     """Every method in the order of the table; one entry for a payoff that no spread method has a say in."""
     value = float(outputs[output_row("value")])
     if KINDS[slate.kind[row]] == "forward":
-        remark, about = "needs no volatility, so no method", "The difference of the legs less the strike, discounted."
+        key, remark = "forward", "needs no volatility, so no method"
+        about = "The difference of the legs less the strike, discounted."
+    elif slate.law[row] == Law.NORMAL:
+        bachelier = NORMAL_METHODS[0]
+        key, remark = bachelier.key, "exact under normal forwards"
+        about = f"{bachelier.applies} {bachelier.source}."
     elif slate.shape[row] != Shape.SPREAD:
-        remark, about = "exact: one leg needs no spread method", "Black, Journal of Financial Economics 3 (1976)"
+        key, remark = "black76", "exact: one leg needs no spread method"
+        about = "Black, Journal of Financial Economics 3 (1976)"
     else:
-        return tuple(_method_reading(slate, row, method, outputs) for method in METHODS)
-    key = "forward" if KINDS[slate.kind[row]] == "forward" else "black76"
-    return (MethodReading(key, _method_name(slate, row), value, _NAN, _NAN, remark, chosen=True, about=about),)
+        return tuple(_method_reading(slate, row, method, outputs) for method in LOGNORMAL_METHODS)
+    return (MethodReading(key, value_method(slate, row), value, _NAN, _NAN, remark, chosen=True, about=about),)
 
 
 def _method_reading(slate: Slate, row: int, method: Method, outputs: FloatArray) -> MethodReading:
     value, reference = float(outputs[output_row(method.key)]), float(outputs[output_row("yardstick")])
     gap, share, remark = _NAN, _NAN, ""
     if method.reference:
-        remark = "reference"
-    elif not method.accepts(slate.values("strike")[row]):
+        error = float(outputs[output_row("yardstick_error")])
+        remark = f"reference ±{error:.0e}" if np.isfinite(error) else "reference"
+    elif not method.accepts(formula_strike({name: slate.values(name)[row : row + 1] for name in STRIKE_INPUTS})).all():
         remark = method.applies
     elif not np.isfinite([value, reference]).all():
         remark = "out of the machine's reach here"
     else:
         gap = value - reference
-        enough = reference > LEAST_PREMIUM * max(_folded_forwards(slate, row))
+        enough = reference > LEAST_PREMIUM * max(map(abs, _folded_forwards(slate, row)))
         share, remark = (gap / reference, "") if enough else (_NAN, "premium too small for a share")
     return MethodReading(
         method.key, method.name, value, gap, share, remark,
@@ -212,11 +306,12 @@ def _method_reading(slate: Slate, row: int, method: Method, outputs: FloatArray)
 def _sensitivity_reading(slate: Slate, row: int, key: str, outputs: FloatArray) -> SensitivityReading:
     column = BY_COLUMN_KEY[key]
     absence = _absence(slate, row, key)
-    value = _NAN if absence else column.scale * float(outputs[output_row(key)])
+    scale = column.scale_at(slate, row)
+    value = _NAN if absence else scale * float(outputs[output_row(key)])
     return SensitivityReading(
         key=key,
         name=column.heading,
-        scaling=column.unit if column.unit.startswith("per ") else "per 1.00",
+        scaling=column.unit if column.unit.startswith("per ") and scale == column.scale else "per 1.00",
         unit_value=value,
         position_value=float(slate.values("quantity")[row]) * value,
         unit=_position_unit(slate, row, key),
@@ -269,7 +364,7 @@ def _unreadable(slate: Slate, row: int, state: State, reason: str) -> Reading:
         subject=_subject(slate, row),
         unit=slate.units[row],
         currency=slate.book.currency,
-        method=_method_name(slate, row),
+        method=value_method(slate, row),
         quantity=float(slate.values("quantity")[row]),
         unit_value=_NAN,
         intrinsic=_NAN,

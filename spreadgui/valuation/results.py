@@ -24,7 +24,21 @@ SENSITIVITIES = (
     "correlation_sensitivity",
     "theta",
 )
-OUTPUTS = (*(method.key for method in METHODS), "value", *SENSITIVITIES)
+# What only some rows have: the strips' sensitivities to the volatilities inside the delivery month, what is known of
+# the Yardstick's own error, and what a quoted premium implies (`implied_status` is an index into IMPLIED_WORDS).
+EXTRAS = (
+    "daily_vega_long",
+    "daily_vega_short",
+    "rate_sensitivity",
+    "yardstick_error",
+    "implied_correlation",
+    "implied_correlation_error",
+    "implied_status",
+)
+IMPLIED_WORDS = ("solved", "below floor", "above ceiling", "not identified")
+OUTPUTS = (*(method.key for method in METHODS), "value", *SENSITIVITIES, *EXTRAS)
+# A row without any of these has no price.
+NEEDED = slice(len(METHODS), len(METHODS) + 1 + len(SENSITIVITIES))
 _OUTPUT_ROW = {key: row for row, key in enumerate(OUTPUTS)}
 
 
@@ -83,6 +97,21 @@ class LiveResults:
         slate, old_rows = succession.slate, succession.old_rows
         kept = np.flatnonzero(old_rows >= 0)
         source = old_rows[kept]
+        if len(self.state) == len(slate) and np.array_equal(source, kept):
+            self._reopen(slate, np.flatnonzero(old_rows < 0))
+        else:
+            self._move(slate, kept, source)
+        self.slate = slate
+        self._settle_unready(np.flatnonzero(old_rows < 0))
+
+    def _reopen(self, slate: Slate, rows: RowArray) -> None:
+        """Every row is in its place, and `rows` are new: an edit costs no copy of all the others."""
+        self.outputs[:, rows], self.state[rows], self._touched[rows] = np.nan, State.PRICING, slate.revision
+        for row in rows.tolist() if self.reasons else ():
+            self.reasons.pop(row, None)
+
+    def _move(self, slate: Slate, kept: RowArray, source: RowArray) -> None:
+        """Rows have come, gone or changed places."""
         outputs = np.full((len(OUTPUTS), len(slate)), np.nan)
         state = np.full(len(slate), State.PRICING, dtype=np.int8)
         touched = np.full(len(slate), slate.revision, dtype=np.int64)
@@ -92,10 +121,8 @@ class LiveResults:
             self._touched[source],
         )
         self.reasons = {int(row): self.reasons[int(old)] for row, old in self._reasoned(kept, source)}
-        if len(self.state) != len(slate) or not np.array_equal(source, kept):
-            self._rows_moved_at = slate.revision
-        self.slate, self.outputs, self.state, self._touched = slate, outputs, state, touched
-        self._settle_unready(np.flatnonzero(old_rows < 0))
+        self._rows_moved_at = slate.revision
+        self.outputs, self.state, self._touched = outputs, state, touched
 
     def accept(self, part: Part) -> RowArray:
         """Take a part; gives the rows whose cells are now current (or refused) through it."""

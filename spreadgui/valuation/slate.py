@@ -6,6 +6,8 @@ the others are resolved anew. One edit in a book of 100,000 rows therefore costs
 
 from __future__ import annotations
 
+import math
+import operator
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
@@ -15,6 +17,7 @@ from numpy.typing import NDArray
 from spreadgui.book.records import Book, Position
 from spreadgui.market.contracts import Readiness, ResolvedPosition, Trouble, resolve
 from spreadgui.market.quotes import Quotes
+from spreadgui.market.strips import Strip
 
 FloatArray = NDArray[np.float64]
 RowArray = NDArray[np.intp]
@@ -33,6 +36,9 @@ INPUTS = (
     "correlation",
     "years",
     "discount",
+    "shift_long",
+    "shift_short",
+    "quoted_premium",
 )
 _INPUT_ROW = {key: row for row, key in enumerate(INPUTS)}
 _NOT_KEPT = -1
@@ -43,7 +49,8 @@ class Slate:
     """What the formulas need of each position. All arrays are read-only and have one entry a position.
 
     `inputs` has one line for each of INPUTS (NaN where a position has no such input), `kind` holds indices into
-    KINDS, `shape` and `readiness` the codes of market.contracts. `troubles` tells why a row is not ready.
+    KINDS, `shape`, `law` and `readiness` the codes of market.contracts. `strips` has the exercises of each row that has
+    more than one. `troubles` tells why a row is not ready.
     """
 
     revision: int
@@ -52,8 +59,10 @@ class Slate:
     inputs: FloatArray
     kind: CodeArray
     shape: CodeArray
+    law: CodeArray
     readiness: CodeArray
     units: tuple[str, ...]
+    strips: Mapping[int, Strip]
     troubles: Mapping[int, tuple[Trouble, ...]]
 
     def __len__(self) -> int:
@@ -81,25 +90,13 @@ def build_slate(book: Book, revision: int) -> Slate:
 def follow(previous: Slate | None, book: Book, revision: int) -> Succession:
     """The slate of `book`, taking over from `previous` whatever still holds."""
     old_rows = _old_rows(previous, book)
-    kept = np.flatnonzero(old_rows != _NOT_KEPT)
-    count = len(book.positions)
-    inputs, codes = np.empty((len(INPUTS), count)), np.empty((3, count), dtype=np.int8)
-    units: list[str] = [""] * count
-    troubles: dict[int, tuple[Trouble, ...]] = {}
-    if previous is not None and kept.size:
-        _take_over(previous, old_rows, kept, inputs, codes, units, troubles)
+    columns = _Columns.taken_over(previous, old_rows)
     quotes = previous.quotes if previous is not None and _same_marks(previous.book, book) else Quotes.of(book)
     for row in np.flatnonzero(old_rows == _NOT_KEPT).tolist():
         position = book.positions[row]
-        resolved = resolve(position, quotes, book.valuation_date, book.zero_rate)
-        inputs[:, row], codes[:, row] = _inputs_of(position, resolved), _codes_of(position, resolved)
-        units[row] = resolved.unit
-        if resolved.troubles:
-            troubles[row] = tuple(resolved.troubles)
-    for array in (inputs, codes, old_rows):
-        array.setflags(write=False)
-    slate = Slate(revision, book, quotes, inputs, codes[0], codes[1], codes[2], tuple(units), troubles)
-    return Succession(slate, old_rows)
+        columns.put(row, position, resolve(position, quotes, book.valuation_date, book.zero_rate))
+    old_rows.setflags(write=False)
+    return Succession(columns.slate(revision, book, quotes), old_rows)
 
 
 def _old_rows(previous: Slate | None, book: Book) -> RowArray:
@@ -110,8 +107,23 @@ def _old_rows(previous: Slate | None, book: Book) -> RowArray:
 
 
 def _rows_of_same_records(old: Sequence[Position], new: Sequence[Position]) -> RowArray:
+    if len(old) == len(new):  # an edit: nearly all stand where they stood, which costs a tenth of looking them up
+        same = np.fromiter(map(operator.is_, old, new), dtype=np.bool_, count=len(new))
+        if not same.all() and len(new) - np.count_nonzero(same) <= len(new) // 8 + 1:
+            strangers = _found({id(old[row]): row for row in np.flatnonzero(~same).tolist()}, new, same)
+            return np.where(same, np.arange(len(new)), strangers)
+        if same.all():
+            return np.arange(len(new))
     row_of = {id(position): row for row, position in enumerate(old)}
     return np.array([row_of.get(id(position), _NOT_KEPT) for position in new], dtype=np.intp)
+
+
+def _found(row_of: Mapping[int, int], new: Sequence[Position], same: NDArray[np.bool_]) -> RowArray:
+    """Where the records that do not stand where they stood come from."""
+    rows = np.full(len(new), _NOT_KEPT, dtype=np.intp)
+    for row in np.flatnonzero(~same).tolist():
+        rows[row] = row_of.get(id(new[row]), _NOT_KEPT)
+    return rows
 
 
 def _same_marks(old: Book, new: Book) -> bool:
@@ -125,29 +137,68 @@ def _same_marks(old: Book, new: Book) -> bool:
     )
 
 
-def _take_over(
-    previous: Slate,
-    old_rows: RowArray,
-    kept: RowArray,
-    inputs: FloatArray,
-    codes: CodeArray,
-    units: list[str],
-    troubles: dict[int, tuple[Trouble, ...]],
-) -> None:
-    source = old_rows[kept]
-    inputs[:, kept] = previous.inputs[:, source]
-    for code, column in zip(codes, (previous.kind, previous.shape, previous.readiness), strict=True):
-        code[kept] = column[source]
-    for row, old_row in zip(kept.tolist(), source.tolist(), strict=True):
-        units[row] = previous.units[old_row]
-    if previous.troubles:
-        for row, old_row in zip(kept.tolist(), source.tolist(), strict=True):
-            if old_row in previous.troubles:
-                troubles[row] = previous.troubles[old_row]
+@dataclass
+class _Columns:
+    """The columns of a slate while it is being made."""
+
+    inputs: FloatArray
+    codes: CodeArray  # kind, shape, law, readiness
+    units: list[str]
+    strips: dict[int, Strip]
+    troubles: dict[int, tuple[Trouble, ...]]
+
+    @staticmethod
+    def taken_over(previous: Slate | None, old_rows: RowArray) -> _Columns:
+        """Filled where a row descends from one of `previous`, and open elsewhere."""
+        count = len(old_rows)
+        columns = _Columns(np.empty((len(INPUTS), count)), np.empty((4, count), dtype=np.int8), [""] * count, {}, {})
+        kept = np.flatnonzero(old_rows != _NOT_KEPT)
+        if previous is None or not kept.size:
+            return columns
+        source = old_rows[kept]
+        codes = (previous.kind, previous.shape, previous.law, previous.readiness)
+        if len(previous) == count and np.array_equal(source, kept):  # all in place: copy whole columns
+            columns.inputs[...] = previous.inputs
+            columns.codes[...] = codes
+            columns.units = list(previous.units)
+        else:
+            columns.inputs[:, kept] = previous.inputs[:, source]
+            columns.codes[:, kept] = np.stack(codes)[:, source]
+            for row, old_row in zip(kept.tolist(), source.tolist(), strict=True):
+                columns.units[row] = previous.units[old_row]
+        new_rows = _descendants(old_rows, [*previous.strips, *previous.troubles])
+        columns.strips = {row: strip for old, strip in previous.strips.items() for row in new_rows.get(old, ())}
+        columns.troubles = {row: told for old, told in previous.troubles.items() for row in new_rows.get(old, ())}
+        return columns
+
+    def put(self, row: int, position: Position, resolved: ResolvedPosition) -> None:
+        """A position that has just been resolved."""
+        self.inputs[:, row], self.codes[:, row] = _inputs_of(position, resolved), _codes_of(position, resolved)
+        self.units[row] = resolved.unit
+        if resolved.strip is not None:
+            self.strips[row] = resolved.strip
+        if resolved.troubles:
+            self.troubles[row] = tuple(resolved.troubles)
+
+    def slate(self, revision: int, book: Book, quotes: Quotes) -> Slate:
+        """What has been gathered, closed to changes."""
+        for array in (self.inputs, self.codes):
+            array.setflags(write=False)
+        kind, shape, law, readiness = self.codes
+        told = (tuple(self.units), self.strips, self.troubles)
+        return Slate(revision, book, quotes, self.inputs, kind, shape, law, readiness, *told)
+
+
+def _descendants(old_rows: RowArray, of: Sequence[int]) -> dict[int, list[int]]:
+    """The new rows that descend from each of the old rows `of`."""
+    found: dict[int, list[int]] = {}
+    for row in np.flatnonzero(np.isin(old_rows, of)).tolist() if of else ():
+        found.setdefault(int(old_rows[row]), []).append(row)
+    return found
 
 
 def _inputs_of(position: Position, resolved: ResolvedPosition) -> tuple[float, ...]:
-    quantity = float("nan") if position.quantity is None else position.quantity
+    quantity = math.nan if position.quantity is None else position.quantity
     return (
         quantity if position.side == "long" else -quantity,
         resolved.forward_long,
@@ -160,9 +211,12 @@ def _inputs_of(position: Position, resolved: ResolvedPosition) -> tuple[float, .
         resolved.correlation,
         resolved.years,
         resolved.discount,
+        resolved.shift_long,
+        resolved.shift_short,
+        math.nan if position.quoted_premium is None else position.quoted_premium,
     )
 
 
-def _codes_of(position: Position, resolved: ResolvedPosition) -> tuple[int, int, int]:
+def _codes_of(position: Position, resolved: ResolvedPosition) -> tuple[int, int, int, int]:
     readiness = max((trouble.readiness for trouble in resolved.troubles), default=Readiness.READY)
-    return KINDS.index(position.kind), resolved.shape, readiness
+    return KINDS.index(position.kind), resolved.shape, resolved.law, readiness

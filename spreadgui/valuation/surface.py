@@ -7,10 +7,14 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from spreadgui.market.contracts import Readiness, Shape
+from spreadgui.market.contracts import Law, Readiness, Shape
+from spreadgui.pricing.methods import NORMAL_METHODS, Method
 from spreadgui.pricing.methods import method as method_of
+from spreadgui.pricing.results import Sensitivities
+from spreadgui.valuation.exercises import Exercises, expand
+from spreadgui.valuation.group import STRIKE_INPUTS, Group, formula_strike
 from spreadgui.valuation.reach import within_reach
-from spreadgui.valuation.slate import KINDS, FloatArray, Slate
+from spreadgui.valuation.slate import INPUTS, KINDS, FloatArray, Slate
 
 
 @dataclass(frozen=True)
@@ -67,7 +71,8 @@ class Surface:
     the line on which the payoff at expiry is zero; n is 0 where the line passes by. `rings`, each (2, n), hold one and
     two standard deviations of the two forwards at the expiry and may leave the rectangle; there are none where
     nothing moves, or where a volatility or the correlation is not known. `reason` is set, and the arrays are empty,
-    where there is no surface to draw.
+    where there is no surface to draw. `method` is the name of what it was drawn by, which under normal forwards is
+    Bachelier whatever was asked for.
     """
 
     revision: int
@@ -84,6 +89,7 @@ class Surface:
     reason: str = ""
     kind: str = "call"
     axis_units: tuple[str, str] = ("", "")
+    method: str = ""
 
     def covers(self, long: float, short: float) -> bool:
         """Whether the point lies in the rectangle."""
@@ -114,26 +120,21 @@ def draw_surface(slate: Slate, request: SurfaceRequest, executor: Executor | Non
     reason = _obstacle(slate, request)
     if reason:
         return _blank(slate, request, reason)
-    cell = {key: float(slate.values(key)[request.row]) for key in _NEEDED}
-    kind = KINDS[slate.kind[request.row]]
-    long = _axis(cell["forward_long"], cell["vol_long"], cell["years"], request.nodes)
-    short = _axis(cell["forward_short"], cell["vol_short"], cell["years"], request.nodes)
-    ends = {"forward_long": long[[0, -1]], "forward_short": short[[0, -1]]}
-    in_reach = within_reach({**cell, **ends}, kind == "forward").all()
-    if not (in_reach and _usable(long, cell["ratio_long"], kind) and _usable(short, cell["ratio_short"], kind)):
+    subject = _Subject.of(slate, request, executor)
+    long, short = subject.axis("long", request.nodes), subject.axis("short", request.nodes)
+    if not subject.takes(long, short):
         return _blank(slate, request, _OUT_OF_REACH)
-    values = _nodes(cell, kind, request, long[np.newaxis, :], short[:, np.newaxis], slate.book.zero_rate, executor)
-    here = np.array([[cell["forward_long"]]]), np.array([[cell["forward_short"]]])
-    at = float(_nodes(cell, kind, request, *here, slate.book.zero_rate, None)[0, 0])
+    values = subject.nodes(long[np.newaxis, :], short[:, np.newaxis])
+    here = (subject.cell["forward_long"], subject.cell["forward_short"])
+    at = float(subject.nodes(np.array([[here[0]]]), np.array([[here[1]]]))[0, 0])
     if not (np.abs(values).max() < _REACH and abs(at) < _REACH):
         return _blank(slate, request, _OUT_OF_REACH)
-    current = (cell["forward_long"], cell["forward_short"], at)
-    boundary, rings = _boundary(cell, long, short), _rings(cell)
+    boundary, rings = _boundary(subject.cell, long, short), _rings(subject.cell, subject.law)
     for array in (long, short, values, boundary, *rings):
         array.setflags(write=False)
     return Surface(
-        slate.revision, request, *_names(slate, request), long, short, values, current, boundary, rings,
-        kind=kind, axis_units=_axis_units(slate, request.row),
+        slate.revision, request, *_names(slate, request), long, short, values, (*here, at), boundary, rings,
+        kind=subject.kind, axis_units=_axis_units(slate, request.row), method=_method_of(slate, request).name,
     )  # fmt: skip
 
 
@@ -172,29 +173,37 @@ def _boundary(cell: dict[str, float], long: FloatArray, short: FloatArray) -> Fl
         return np.array([line, np.clip((ratio_long * line - strike) / ratio_short, short[0], short[-1])])
 
 
-def _rings(cell: dict[str, float]) -> tuple[FloatArray, ...]:
-    """One and two standard deviations; none where a forward is not lognormal, stands still or is not known enough."""
+def _rings(cell: dict[str, float], law: Law) -> tuple[FloatArray, ...]:
+    """One and two standard deviations; none where a forward cannot move so, stands still or is not known enough."""
     deviations = [cell[key] * np.sqrt(cell["years"]) for key in ("vol_long", "vol_short")]
     known = np.isfinite([*deviations, cell["correlation"]]).all()
-    if not known or max(deviations) <= 0 or min(cell["forward_long"], cell["forward_short"]) <= 0:
+    lifted = [cell[f"forward_{side}"] + cell[f"shift_{side}"] for side in ("long", "short")]
+    if not known or max(deviations) <= 0 or (law is Law.LOGNORMAL and min(lifted) <= 0):
         return ()
-    return tuple(_ring(cell, deviations[0] * count, deviations[1] * count) for count in (1.0, 2.0))
+    return tuple(_ring(cell, law, deviations[0] * count, deviations[1] * count) for count in (1.0, 2.0))
 
 
-def _ring(cell: dict[str, float], deviation_long: float, deviation_short: float) -> FloatArray:
-    """The ellipse of these deviations of the two log-forwards around where they stand now, as forwards."""
+def _ring(cell: dict[str, float], law: Law, deviation_long: float, deviation_short: float) -> FloatArray:
+    """The ellipse of these deviations, of the two forwards or of their logarithms, around where they stand now."""
     rho, angle = cell["correlation"], np.linspace(0.0, 2.0 * np.pi, _RING_POINTS)
     along = np.cos(angle)
     across = rho * along + np.sqrt((1.0 - rho) * (1.0 + rho)) * np.sin(angle)
     with np.errstate(over="ignore", under="ignore"):
-        long = cell["forward_long"] * np.exp(deviation_long * along)
-        short = cell["forward_short"] * np.exp(deviation_short * across)
-    return np.asarray(np.nan_to_num(np.array([long, short])))
+        ring = [
+            _moved(cell, side, law, deviation * step)
+            for side, deviation, step in (("long", deviation_long, along), ("short", deviation_short, across))
+        ]
+    return np.asarray(np.nan_to_num(np.array(ring)))
+
+
+def _moved(cell: dict[str, float], side: str, law: Law, move: FloatArray) -> FloatArray:
+    forward, shift = cell[f"forward_{side}"], cell[f"shift_{side}"]
+    return np.asarray(forward + move if law is Law.NORMAL else (forward + shift) * np.exp(move) - shift)
 
 
 _NEEDED = (
     "forward_long", "forward_short", "ratio_long", "ratio_short", "strike",
-    "vol_long", "vol_short", "correlation", "years", "discount",
+    "vol_long", "vol_short", "correlation", "years", "discount", "shift_long", "shift_short",
 )  # fmt: skip
 
 
@@ -205,15 +214,100 @@ def _obstacle(slate: Slate, request: SurfaceRequest) -> str:
         return f"{sentence[:1].upper()}{sentence[1:]}."
     if slate.shape[row] != Shape.SPREAD:
         return "This position has one leg; a Landscape is drawn over two."
-    method = method_of(request.method)
-    if KINDS[slate.kind[row]] != "forward" and not method.accepts(slate.values("strike")[row]).all():
+    method, forward = _method_of(slate, request), KINDS[slate.kind[row]] == "forward"
+    if not forward and Law[method.law.upper()] != slate.law[row]:
+        return f"{method.name} does not cover this position. {method.applies}"
+    strike = formula_strike({key: slate.values(key)[row : row + 1] for key in STRIKE_INPUTS})
+    if not forward and not method.accepts(strike).all():
         return f"{method.name} does not cover this position. {method.applies}"
     return ""
 
 
-def _axis(forward: float, vol: float, years: float, nodes: int) -> FloatArray:
+def _method_of(slate: Slate, request: SurfaceRequest) -> Method:
+    """What draws the surface: the method asked for, or the one that normal forwards have."""
+    return NORMAL_METHODS[0] if slate.law[request.row] == Law.NORMAL else method_of(request.method)
+
+
+@dataclass(frozen=True)
+class _Subject:
+    """The position that is drawn: its exercises, and what it stands on. `lines` are one for each day of a strip."""
+
+    cell: dict[str, float]
+    kind: str
+    law: Law
+    method: Method
+    quantity: Quantity
+    lines: Exercises
+    zero_rate: float
+    executor: Executor | None
+
+    @staticmethod
+    def of(slate: Slate, request: SurfaceRequest, executor: Executor | None) -> _Subject:
+        row = request.row
+        return _Subject(
+            {key: float(slate.values(key)[row]) for key in _NEEDED},
+            KINDS[slate.kind[row]],
+            Law(slate.law[row]),
+            _method_of(slate, request),
+            quantity_of(request.quantity),
+            expand(slate, np.array([row])),
+            slate.book.zero_rate,
+            executor,
+        )
+
+    def axis(self, side: str, nodes: int) -> FloatArray:
+        """Nodes around a forward, evenly spaced; a lognormal one on its side of zero once shifted."""
+        forward, shift, vol = (self.cell[f"{part}_{side}"] for part in ("forward", "shift", "vol"))
+        deviation = 0.0 if np.isnan(vol) else vol * np.sqrt(self.cell["years"])
+        if self.law is Law.NORMAL:
+            reach = max(_DEVIATIONS * deviation, _LEAST_REACH * abs(forward)) or 1.0
+            with np.errstate(over="ignore", invalid="ignore"):
+                return np.linspace(forward - reach, forward + reach, nodes)
+        return _axis(forward + shift, deviation, nodes) - shift
+
+    def takes(self, long: FloatArray, short: FloatArray) -> bool:
+        """Whether the formulas take all of the rectangle, and its nodes are apart."""
+        ends = {"forward_long": long[[0, -1]], "forward_short": short[[0, -1]]}
+        in_reach = within_reach({**self.cell, **ends}, self.kind == "forward", self.law is Law.NORMAL).all()
+        either_sign = self.kind == "forward" or self.law is Law.NORMAL
+        return bool(in_reach) and all(
+            _usable(axis, self.cell[f"ratio_{side}"], self.cell[f"shift_{side}"], either_sign)
+            for side, axis in (("long", long), ("short", short))
+        )
+
+    def nodes(self, long: FloatArray, short: FloatArray) -> FloatArray:
+        """The quantity at every pair of forwards, in screen scaling: the sum over the exercises."""
+        ratio = self.cell.get(_RATIO.get(self.quantity.key, ""), 1.0)
+        with np.errstate(over="ignore", invalid="ignore"):
+            parts = [share * self._line(line, long, short) for line, share in enumerate(self.lines.share.tolist())]
+            return np.asarray(sum(parts[1:], parts[0]) * self.quantity.scale * ratio)
+
+    def _line(self, line: int, long: FloatArray, short: FloatArray) -> FloatArray:
+        """One exercise, in code units, to the forwards with their ratios folded in."""
+        cell = dict(zip(INPUTS, self.lines.inputs[:, line].tolist(), strict=True))
+        on = {**cell, "forward_long": long, "forward_short": short}
+        arguments = Group(self.kind, Shape.SPREAD, self.law, on).spread_arguments
+        if self.kind == "forward":
+            legs = (cell["ratio_long"] * long, cell["ratio_short"] * short)
+            return _forward_nodes(cell, self.quantity.key, *legs, self.zero_rate)
+        if self.quantity.key == "value":
+            return self.method.value(*arguments, kind=self.kind, executor=self.executor)
+        found = self.method.sensitivities(*arguments, kind=self.kind, executor=self.executor)
+        return self._sensitivity(line, cell, found)
+
+    def _sensitivity(self, line: int, cell: dict[str, float], found: Sensitivities) -> FloatArray:
+        """One of them to the marks: an absolute volatility's through its ratio, a strip's by its chain."""
+        normal = self.law is Law.NORMAL
+        for key, ratio in (("vega_long", cell["ratio_long"]), ("vega_short", cell["ratio_short"])):
+            found = found._replace(**{key: getattr(found, key) * ratio}) if normal else found
+        chain, key = self.lines.chain, self.quantity.key
+        answer = getattr(found, key) if chain is None else chain.at(line, key, found)
+        # A method holds the discount factor; the carry of the premium is the rate's.
+        return np.asarray(answer + (self.zero_rate * found.value if key == "theta" else 0.0))
+
+
+def _axis(forward: float, deviation: float, nodes: int) -> FloatArray:
     """Nodes around `forward`, evenly spaced, on its side of zero; around one of zero, as far as 1 either way."""
-    deviation = 0.0 if np.isnan(vol) else vol * np.sqrt(years)
     reach = float(np.clip(np.expm1(min(_DEVIATIONS * deviation, 10.0)), _LEAST_REACH, _MOST_REACH))
     if forward == 0:
         return np.linspace(-1.0, 1.0, nodes)
@@ -222,53 +316,13 @@ def _axis(forward: float, vol: float, years: float, nodes: int) -> FloatArray:
         return np.linspace(low, high, nodes)
 
 
-def _usable(axis: FloatArray, ratio: float, kind: str) -> bool:
-    """Whether the nodes are numbers that rise, and stay numbers (for an option, above zero) once the ratio is in."""
+def _usable(axis: FloatArray, ratio: float, shift: float, either_sign: bool) -> bool:
+    """Whether the nodes are numbers that rise, and stay numbers (above zero, where they must) once ratio and shift are
+    in."""
     with np.errstate(all="ignore"):
-        folded = ratio * axis
+        folded = ratio * (axis + shift)
         rising = np.isfinite(axis).all() and (np.diff(axis) > 0).all() and np.isfinite(axis[-1] - axis[0])
-    return bool(rising and np.isfinite(folded).all() and (kind == "forward" or (folded > 0).all()))
-
-
-def _nodes(
-    cell: dict[str, float],
-    kind: str,
-    request: SurfaceRequest,
-    long: FloatArray,
-    short: FloatArray,
-    zero_rate: float,
-    executor: Executor | None,
-) -> FloatArray:
-    """The quantity at every pair of forwards, in screen scaling."""
-    quantity = quantity_of(request.quantity)
-    legs = (cell["ratio_long"] * long, cell["ratio_short"] * short)
-    with np.errstate(over="ignore", invalid="ignore"):
-        if kind == "forward":
-            values = _forward_nodes(cell, quantity.key, *legs, zero_rate)
-        else:
-            values = _option_nodes(cell, kind, request, *legs, zero_rate, executor)
-        return np.asarray(values * quantity.scale * cell.get(_RATIO.get(quantity.key, ""), 1.0))
-
-
-def _option_nodes(
-    cell: dict[str, float],
-    kind: str,
-    request: SurfaceRequest,
-    long: FloatArray,
-    short: FloatArray,
-    zero_rate: float,
-    executor: Executor | None,
-) -> FloatArray:
-    """By the method, in code units, to the forwards with their ratios folded in."""
-    method, key = method_of(request.method), request.quantity
-    rest = (cell[name] for name in ("strike", "vol_long", "vol_short", "correlation", "years", "discount"))
-    arguments: tuple[FloatArray | float, ...] = (long, short, *rest)
-    if key == "value":
-        return np.asarray(method.value(*arguments, kind=kind, executor=executor))
-    found = method.sensitivities(*arguments, kind=kind, executor=executor)
-    if key == "theta":  # a method holds the discount factor; the carry of the premium is the rate's
-        return np.asarray(found.theta + zero_rate * found.value)
-    return np.asarray(getattr(found, key))
+    return bool(rising and np.isfinite(folded).all() and (either_sign or (folded > 0).all()))
 
 
 def _forward_nodes(

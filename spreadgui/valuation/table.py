@@ -12,11 +12,13 @@ from dataclasses import dataclass
 
 from spreadgui.book.records import Book
 from spreadgui.pricing.methods import method as method_of
-from spreadgui.valuation.columns import ALL_ROWS, BY_COLUMN_KEY, VALUE_TABLE, Column, exact_texts, screen_texts
-from spreadgui.valuation.price import chunks, price_rows
+from spreadgui.valuation.column import ALL_ROWS, Column, exact_texts, screen_texts
+from spreadgui.valuation.columns import BY_COLUMN_KEY, VALUE_TABLE
+from spreadgui.valuation.price import price_parts
 from spreadgui.valuation.results import LiveResults, State
 from spreadgui.valuation.shown import number_text
 from spreadgui.valuation.slate import Slate, follow
+from spreadgui.valuation.trust import CLOSED_FORMS, Trust, tolerance_words, trust_of
 
 
 @dataclass(frozen=True)
@@ -28,12 +30,13 @@ class ValuedBook:
 
 
 def value_book(book: Book, executor: Executor | None = None) -> ValuedBook:
-    """Price every position of `book`; a row that cannot be priced says why, all others are current."""
+    """Price every position of `book`; a row that cannot be priced says why, all others are current. With an `executor`
+    chunks of rows are mapped over it."""
     succession = follow(None, book, 1)
     results = LiveResults()
     results.follow(succession)
-    for rows in chunks(results.pending()):
-        results.accept(price_rows(succession.slate, rows, executor))
+    for part in price_parts(succession.slate, results.pending(), executor):
+        results.accept(part)
     return ValuedBook(succession.slate, results)
 
 
@@ -58,6 +61,11 @@ def json_text(valued: ValuedBook) -> str:
         "valuation_date": book.valuation_date.isoformat(),
         "method": book.method,
         "book_value": valued.results.total_value(),
+        "gap_tolerance": book.gap_tolerance,
+        "beyond_tolerance": {
+            trust.method.key: {"positions": trust.rows, "value": trust.value, "share": trust.share}
+            for trust in _trusts(valued)
+        },
     }
     positions = [{key: cells[key][row] for key in VALUE_TABLE} for row in range(len(valued.slate))]
     return json.dumps({**head, "positions": positions}, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
@@ -71,12 +79,28 @@ def summary_text(valued: ValuedBook) -> str:
     states = [State(int(code)).word for code in valued.results.state]
     counts = ", ".join(f"{states.count(word)} {word}" for word in dict.fromkeys(states))
     total = f"Book value {number_text(valued.results.total_value(), 0)} {book.currency}".rstrip()
-    lines += ["", f"{total} ({counts})"]
+    lines += ["", f"{total} ({counts})", *_trust_lines(valued)]
     return "\n".join(lines)
 
 
+def _trusts(valued: ValuedBook) -> list[Trust]:
+    return [trust_of(method, valued.slate, valued.results) for method in CLOSED_FORMS]
+
+
+def _trust_lines(valued: ValuedBook) -> Iterator[str]:
+    """What each closed form is beyond the tolerance for, one line each."""
+    currency, tolerance = valued.slate.book.currency, tolerance_words(valued.slate)
+    for trust in _trusts(valued):
+        rests = ", which the values rest on," if trust.method.key == valued.slate.book.method else ""
+        worth = f"{number_text(trust.value, 0)} {currency}".rstrip()
+        yield (
+            f"{trust.method.name}{rests} is beyond {tolerance} of premium for {trust.rows} positions worth {worth}, "
+            f"{100.0 * trust.share:.0f} % of the book without signs"
+        )
+
+
 def _summary_rows(valued: ValuedBook) -> Iterator[tuple[str, ...]]:
-    keys = ("name", "position_value", "yardstick", "bjerksund_stensland", "kirk", "state", "reason")
+    keys = ("name", "position_value", "yardstick", "bjerksund_stensland", "kirk", "formula_check", "state", "reason")
     columns, rows = [BY_COLUMN_KEY[key] for key in keys], range(len(valued.slate))
     yield tuple(column.heading for column in columns)
     yield from zip(*(screen_texts(column, valued.slate, valued.results, rows) for column in columns), strict=True)

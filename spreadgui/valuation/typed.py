@@ -5,11 +5,13 @@ from __future__ import annotations
 from decimal import Decimal
 
 from spreadgui.book.entries import EntryError, Value, number, plain_digits, quoted
-from spreadgui.valuation.columns import Column
+from spreadgui.valuation.column import Column
 
 
-def read_typed(column: Column, text: str) -> Value:
+def read_typed(column: Column, text: str, scale: float | None = None) -> Value:
     """The value, in code units, of a text typed into a column; raises EntryError with a sentence.
+
+    `scale` is the column's own unless the row has another (`Column.scale_at`): at 1 nothing is in per cent.
 
     >>> from spreadgui.valuation.columns import BY_COLUMN_KEY
     >>> read_typed(BY_COLUMN_KEY["vol_long"], "45 %"), read_typed(BY_COLUMN_KEY["vol_long"], "")
@@ -17,7 +19,7 @@ def read_typed(column: Column, text: str) -> Value:
     """
     assert column.field is not None
     entry = column.field.entry
-    if not column.field.in_percent or not text.strip():
+    if not column.field.in_percent or scale == 1.0 or not text.strip():
         return entry.read(text)
     value = number_in_percent(text)
     try:
@@ -26,15 +28,15 @@ def read_typed(column: Column, text: str) -> Value:
         raise EntryError(f"expected {column.field.in_percent}, got {quoted(text)}") from None
 
 
-def typed_text(column: Column, value: Value) -> str:
-    """How a value, in code units, would be typed into a column, to the last digit.
+def typed_text(column: Column, value: Value, scale: float | None = None) -> str:
+    """How a value, in code units, would be typed into a column, to the last digit; `scale` as for `read_typed`.
 
     >>> from spreadgui.valuation.columns import BY_COLUMN_KEY
     >>> typed_text(BY_COLUMN_KEY["vol_long"], 0.57)
     '57'
     """
     assert column.field is not None
-    if column.field.in_percent and isinstance(value, float | int):
+    if column.field.in_percent and scale != 1.0 and isinstance(value, float | int):
         return percent_text(value)
     return column.field.entry.text(value)
 

@@ -22,12 +22,16 @@ PATIENT = settings(deadline=None, max_examples=60, suppress_health_check=[Health
 words = st.text(max_size=12)
 finite = st.floats(allow_nan=False, allow_infinity=False)
 maybe = finite | st.none()
-marks = st.builds(Mark, delivery=words, forward=finite, volatility=finite)
+marks = st.builds(Mark, delivery=words, forward=finite, volatility=finite, daily_volatility=maybe)
 markets = st.builds(
     Market,
     name=words,
     unit=words,
     tie_strength=finite,
+    dynamics=st.sampled_from(["lognormal", "shifted lognormal", "normal"]),
+    shift=finite,
+    business_days=words,
+    holidays=st.lists(st.dates(), max_size=3).map(tuple),
     note=words,
     marks=st.lists(marks, max_size=3).map(tuple),
 )
@@ -45,11 +49,13 @@ positions = st.builds(
     short_ratio=finite,
     strike=finite,
     expiry=st.dates() | st.none(),
+    exercise=st.sampled_from(["once", "business days", "all days"]),
     own_forward_long=maybe,
     own_forward_short=maybe,
     own_vol_long=maybe,
     own_vol_short=maybe,
     own_correlation=maybe,
+    quoted_premium=maybe,
     note=words,
 )
 books = st.builds(
@@ -59,6 +65,7 @@ books = st.builds(
     valuation_date=st.dates(),
     zero_rate=finite,
     method=st.sampled_from(["kirk", "modified_kirk", "bjerksund_stensland", "yardstick"]),
+    gap_tolerance=finite,
     note=words,
     markets=st.lists(markets, max_size=3).map(tuple),
     correlations=st.lists(st.builds(Correlation, first=words, second=words, correlation=finite), max_size=3).map(tuple),
@@ -71,7 +78,7 @@ BOOK = Book(
     valuation_date=datetime.date(2026, 12, 1),
     zero_rate=0.03,
     markets=(
-        Market("Ardenmoor North", "CRN/MWh", 0.4, "", (Mark("2027-01", 81.5, 0.52), Mark("2027-02", 77.0, 0.49))),
+        Market("Ardenmoor North", "CRN/MWh", 0.4, marks=(Mark("2027-01", 81.5, 0.52), Mark("2027-02", 77.0, 0.49))),
         Market("Pellan gas point", "CRN/GJ", marks=(Mark("2027-01", 9.25, 0.6),)),
     ),
     correlations=(Correlation("Ardenmoor North", "Pellan gas point", 0.7),),
@@ -109,14 +116,16 @@ def test_the_file_is_json_that_any_reader_takes_with_one_record_a_line(book: Boo
     assert raw["positions"] == json.loads(msgspec.json.encode(book.positions))
     assert written.endswith(b"}\n")
     lines = written.count(b"\n")
-    assert lines == 1 + 11 + 1 + 3 + len(book.positions) + len(book.correlations) + sum(map(market_lines, book.markets))
+    assert lines == 1 + 12 + 1 + 3 + len(book.positions) + len(book.correlations) + sum(map(market_lines, book.markets))
 
 
 def market_lines(market: Market) -> int:
     """A market without marks takes one line; one with marks is opened up."""
     if not market.marks:
         return 1
-    return 2 + 2 + (market.tie_strength != 0) + (market.note != "") + 2 + len(market.marks)
+    fields = ("tie_strength", "dynamics", "shift", "business_days", "holidays", "note")
+    written = sum(getattr(market, field) != getattr(Market("", ""), field) for field in fields)
+    return 2 + 2 + written + 2 + len(market.marks)
 
 
 def test_save_open_save_leaves_the_file_as_it_was(tmp_path: Path) -> None:
@@ -142,6 +151,8 @@ ONE_CELL_EDITS: list[tuple[str, Any]] = [
     ("own_correlation", -0.2),
     ("note", "x"),
     ("short_ratio", 7.2),
+    ("exercise", "all days"),
+    ("quoted_premium", 8.25),
 ]
 
 

@@ -9,6 +9,7 @@ import io
 import random
 from pathlib import Path
 
+import msgspec
 import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
@@ -26,6 +27,11 @@ SIMPLE = Position(side="long", kind="call", quantity=10.0, expiry=datetime.date(
 
 FULL_HEADER = (
     "name,side,kind,quantity,long_leg,long_delivery,long_ratio,short_leg,short_delivery,short_ratio,strike,expiry,"
+    "exercise,own_forward_long,own_forward_short,own_vol_long,own_vol_short,own_correlation,quoted_premium,note"
+)
+# What other systems were told to write; none of it may go.
+PROMISED_HEADER = (
+    "name,side,kind,quantity,long_leg,long_delivery,long_ratio,short_leg,short_delivery,short_ratio,strike,expiry,"
     "own_forward_long,own_forward_short,own_vol_long,own_vol_short,own_correlation,note"
 )
 FULL = Position(
@@ -41,11 +47,13 @@ FULL = Position(
     short_ratio=7.2,
     strike=-4.5,
     expiry=datetime.date(2027, 1, 15),
+    exercise="business days",
     own_forward_long=80.0,
     own_forward_short=9.0,
     own_vol_long=0.5,
     own_vol_short=0.6,
     own_correlation=-0.25,
+    quoted_premium=8.125,
     note='says "wait",\nthen more',
 )
 
@@ -73,6 +81,21 @@ def test_the_needed_columns_alone_make_a_position_with_the_defaults() -> None:
 def test_the_whole_header_of_the_file_format_is_taken() -> None:
     assert FULL_HEADER.split(",") == [field.key for field in FIELDS]
     assert parse_positions(table(FULL_HEADER.split(","), [FULL, SIMPLE])) == (FULL, SIMPLE)
+
+
+def test_the_header_that_was_promised_to_others_is_taken() -> None:
+    (position,) = parse_positions(table(PROMISED_HEADER.split(","), [FULL]))
+    assert position == msgspec.structs.replace(FULL, exercise="once", quoted_premium=None)
+
+
+def test_only_a_strip_may_leave_its_expiry_empty_wherever_the_exercise_stands() -> None:
+    for header, row in (("expiry,exercise", ",all days"), ("exercise,expiry", "business days,")):
+        (strip,) = parse_positions(f"side,kind,quantity,{header}\nlong,call,10,{row}\n".encode())
+        assert strip.expiry is None
+        assert strip.exercise != "once"
+    assert faults_of("side,kind,quantity,expiry,exercise\nlong,call,10,,\n") == [
+        "line 2, expiry: is empty, and is needed"
+    ]
 
 
 @pytest.mark.parametrize("seed", range(8))
@@ -106,6 +129,8 @@ positions = st.builds(
     own_vol_long=at_least_zero | st.none(),
     own_vol_short=at_least_zero | st.none(),
     own_correlation=st.floats(-1.0, 1.0) | st.none(),
+    exercise=st.sampled_from(["once", "business days", "all days"]),
+    quoted_premium=finite | st.none(),
     note=words,
 )
 

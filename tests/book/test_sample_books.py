@@ -10,6 +10,7 @@ import runpy
 from pathlib import Path
 from typing import Any
 
+import msgspec
 import numpy as np
 import pytest
 
@@ -17,11 +18,11 @@ from spreadgui.book.entries import delivery_start
 from spreadgui.book.faults import BookError
 from spreadgui.book.positions_csv import parse_positions
 from spreadgui.book.reading import parse_book, read_book
-from spreadgui.book.records import Book, Position
+from spreadgui.book.records import Book, Market, Position
 from spreadgui.book.schema import book_schema, schema_bytes
 from spreadgui.book.writing import book_bytes
 from spreadgui.market.check import faults_of
-from spreadgui.market.contracts import ResolvedPosition, Shape, resolve
+from spreadgui.market.contracts import Law, ResolvedPosition, Shape, resolve
 from spreadgui.market.quotes import Quotes
 from spreadgui.market.time import years
 from spreadgui.pricing import kirk
@@ -114,25 +115,54 @@ def _hold_against(value: Any, schema: dict[str, Any], records: dict[str, Any]) -
 # --- the invented market ---------------------------------------------------------------------------------------------
 
 
+def by_the_month(book: Book) -> list[Market]:
+    """The markets that are marked for every month; the nights stand apart."""
+    return [market for market in book.markets if market.dynamics != "normal"]
+
+
 def test_the_demo_marks_nine_markets_for_two_years(demo: Book) -> None:
     months = [f"{year}-{month:02d}" for year in (2027, 2028) for month in range(1, 13)]
-    assert len(demo.markets) == 9
-    for market in demo.markets:
+    assert len(by_the_month(demo)) == 9
+    for market in by_the_month(demo):
         assert [mark.delivery for mark in market.marks] == months
         assert all(mark.forward > 0 and 0.2 < mark.volatility < 0.95 for mark in market.marks)
         assert market.tie_strength > 0
         assert market.unit.startswith(demo.currency + "/")
 
 
+def test_the_nights_of_the_demo_are_normal_and_fall_below_zero(demo: Book) -> None:
+    nights = [market for market in demo.markets if market.dynamics == "normal"]
+    forwards = [mark.forward for market in nights for mark in market.marks]
+    assert len(nights) == 2
+    assert min(forwards) < 0.0 < max(forwards)
+    assert all(15.0 < mark.volatility < 30.0 for market in nights for mark in market.marks)
+
+
+def test_a_shift_leaves_the_absolute_moves_of_its_market_as_they_were(demo: Book) -> None:
+    shifted = [market for market in demo.markets if market.shift]
+    assert [market.name for market in shifted] == ["Ardenmoor North", "Quill Island"]
+    for market in shifted:
+        assert market.dynamics == "shifted lognormal"
+        assert all(mark.volatility * (mark.forward + market.shift) < 0.95 * mark.forward for mark in market.marks)
+
+
+def test_a_day_moves_more_than_its_month(demo: Book) -> None:
+    daily = [mark for market in demo.markets for mark in market.marks if mark.daily_volatility is not None]
+    assert len(daily) == 4 * 24 + 2 * 6
+    assert all(mark.daily_volatility is not None and mark.daily_volatility > mark.volatility for mark in daily)
+
+
 def test_every_pair_of_markets_is_correlated_and_the_matrix_is_positive_definite(demo: Book) -> None:
-    matrix = _correlation_matrix(demo)
-    assert len(demo.correlations) == 36
+    months = msgspec.structs.replace(demo, markets=tuple(by_the_month(demo)), correlations=demo.correlations[:-1])
+    matrix = _correlation_matrix(months)
+    assert len(months.correlations) == 36
+    assert demo.correlations[-1].first.endswith(" nights")
     assert not np.isnan(matrix).any()
     assert np.linalg.eigvalsh(matrix).min() > 0.05
 
 
 def test_a_near_delivery_is_more_volatile_than_the_same_month_a_year_on(demo: Book) -> None:
-    for market in demo.markets:
+    for market in by_the_month(demo):
         first, second = market.marks[:12], market.marks[12:]
         assert all(near.volatility > far.volatility for near, far in zip(first, second, strict=True))
 
@@ -167,6 +197,9 @@ def test_the_demo_shows_every_kind_of_position(demo: Book) -> None:
     assert any(position.long_leg and position.short_leg and _own_marks(position) for position in positions)
     assert any(not position.long_leg for position in positions)
     assert any(not position.short_leg and position.own_forward_short for position in positions)
+    assert {position.exercise for position in positions} == {"once", "business days", "all days"}
+    assert sum(position.quoted_premium is not None for position in positions) >= 3
+    assert {resolved.law for resolved in _resolved(demo)} == set(Law)
 
 
 def test_the_names_of_the_demo_are_short_and_different(demo: Book) -> None:
@@ -176,7 +209,9 @@ def test_the_names_of_the_demo_are_short_and_different(demo: Book) -> None:
 
 
 def test_every_option_of_the_demo_expires_on_a_weekday_shortly_before_its_first_delivery(demo: Book) -> None:
-    for position in demo.positions:
+    once = [position for position in demo.positions if position.exercise == "once"]
+    assert len(once) >= 50
+    for position in once:
         assert position.expiry is not None
         deliveries = [month for month in (position.long_delivery, position.short_delivery) if month]
         before = delivery_start(min(deliveries)) - position.expiry
@@ -188,7 +223,8 @@ def test_every_option_of_the_demo_expires_on_a_weekday_shortly_before_its_first_
 def test_the_spread_options_of_the_demo_lie_on_both_sides_of_the_money_at_sensible_values(demo: Book) -> None:
     moneyness = []
     for position, inputs in zip(demo.positions, _resolved(demo), strict=True):
-        if position.kind == "forward" or inputs.shape is not Shape.SPREAD:
+        lognormal = position.exercise == "once" and inputs.law is Law.LOGNORMAL
+        if position.kind == "forward" or inputs.shape is not Shape.SPREAD or not lognormal:
             continue
         long, short = position.long_ratio * inputs.forward_long, position.short_ratio * inputs.forward_short
         marks = inputs.vol_long, inputs.vol_short, inputs.correlation, inputs.years, inputs.discount

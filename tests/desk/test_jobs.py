@@ -9,8 +9,9 @@ import numpy as np
 import pytest
 from pytestqt.qtbot import QtBot
 
-from spreadgui.desk.jobs import ROWS_A_STEP, Failure, Finished, Job, PricingThread
+from spreadgui.desk.jobs import Failure, Finished, Job, PricingThread
 from spreadgui.valuation import price
+from spreadgui.valuation.price import CHUNK_ROWS
 from spreadgui.valuation.reading import Reading
 from spreadgui.valuation.results import Part
 from spreadgui.valuation.slate import build_slate
@@ -52,7 +53,7 @@ def test_results_arrive_on_the_thread_that_asked(thread: PricingThread) -> None:
 
 
 def test_a_newer_job_takes_the_place_of_the_one_under_way(thread: PricingThread, results: list[object]) -> None:
-    rows = 4 * ROWS_A_STEP
+    rows = 4 * CHUNK_ROWS
     long_slate = build_slate(book_of(*[spark()] * rows), 1)
     thread.submit(Job(long_slate, NO_ROWS, np.arange(rows)))
     thread.submit(Job(build_slate(book_of(cap()), 2), np.array([0]), NO_ROWS))

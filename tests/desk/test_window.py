@@ -251,7 +251,7 @@ DEMO = shipped.sample_book("ardenmoor_winter").read_bytes()
     "content",
     [
         b"", b"{", DEMO[:5000], b"\x00\x01\x02", b'{"format": "other"}', b"[" * 10_000,
-        DEMO.replace(b'"version": 1', b'"version": 99'), DEMO.replace(b"0.032", b'"x"'),
+        DEMO.replace(b'"version": 2', b'"version": 99'), DEMO.replace(b"0.032", b'"x"'),
     ],
     ids=["empty", "cut at once", "cut", "binary", "foreign", "deep", "newer", "wrong entry"],
 )  # fmt: skip

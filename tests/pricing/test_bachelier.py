@@ -166,7 +166,7 @@ def test_values_grow_with_the_unit_of_money_and_move_with_its_origin(option: tup
     unit = 2.0**power
     scaled = bachelier.value(*(one * unit for one in option[:5]), *option[5:])
     value = bachelier.value(*option)
-    assert scaled == pytest.approx(unit * value, rel=1e-13, abs=0.0)
+    assert scaled == pytest.approx(unit * value, rel=1e-13, abs=1e-300)  # below, doubles have fewer digits
     # A forward of 512 and more keeps about 1e-13 of an amount: what is added to it loses its digits beyond.
     moved = bachelier.value(option[0] + 512.0, option[1] + 512.0, *option[2:])
     assert moved == pytest.approx(value, rel=1e-9, abs=1e-12 * (512.0 + size(option)))

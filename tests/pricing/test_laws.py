@@ -9,7 +9,7 @@ from hypothesis import strategies as st
 
 from spreadgui.pricing import margrabe, methods, yardstick
 
-ALL = methods.METHODS
+ALL = methods.LOGNORMAL_METHODS
 ANY_STRIKE = [method for method in ALL if method.accepts(1.0)]
 KEYS = [method.key for method in ALL]
 ANY_STRIKE_KEYS = [method.key for method in ANY_STRIKE]
@@ -132,6 +132,8 @@ def test_the_bjerksund_stensland_rule_is_worth_no_more_than_the_best(option: tup
 
 
 def test_the_table_of_methods_is_in_order_and_names_one_reference() -> None:
+    assert [method.key for method in methods.METHODS] == [*KEYS, "bachelier"]
+    assert [method.key for method in methods.NORMAL_METHODS] == ["bachelier"]
     assert KEYS == ["margrabe", "kirk", "modified_kirk", "bjerksund_stensland", "yardstick"]
     assert [method.key for method in ALL if method.reference] == ["yardstick"]
     assert methods.method("margrabe").accepts(np.array([0.0, -0.0, 1e-300, 5.0])).tolist() == [True, True, False, False]

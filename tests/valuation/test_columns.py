@@ -11,14 +11,8 @@ from hypothesis import strategies as st
 from spreadgui.book.entries import EntryError
 from spreadgui.book.fields import FIELDS
 from spreadgui.pricing.methods import METHODS
-from spreadgui.valuation.columns import (
-    BY_COLUMN_KEY,
-    COLUMNS,
-    SCREEN_COLUMNS,
-    VALUE_TABLE,
-    exact_texts,
-    screen_texts,
-)
+from spreadgui.valuation.column import exact_texts, screen_texts
+from spreadgui.valuation.columns import BY_COLUMN_KEY, COLUMNS, SCREEN_COLUMNS, VALUE_TABLE
 from spreadgui.valuation.table import value_book
 from spreadgui.valuation.typed import number_in_percent, percent_text, read_typed, typed_text
 from tests.books import book_of, cap, season, spark

@@ -11,9 +11,10 @@ from collections.abc import Sequence
 from enum import IntEnum
 from typing import NamedTuple
 
-from spreadgui.valuation.columns import Column, screen_texts
+from spreadgui.valuation.column import Column, screen_texts
 from spreadgui.valuation.results import LiveResults, State
 from spreadgui.valuation.slate import RowArray, Slate
+from spreadgui.valuation.trust import beyond
 
 BLOCK_ROWS = 64
 # When more rows of a block change than this, formatting it afresh when it is next asked for costs less.
@@ -30,6 +31,7 @@ class Look(IntEnum):
     PRICING = 4
     INCOMPLETE = 5
     REFUSED = 6
+    BEYOND = 7  # a formula gap larger than the book's tolerance
 
 
 # By state: how a computed cell of such a row looks.
@@ -93,6 +95,8 @@ class CellCache:
         if column.computed:
             states = self._results.state[rows.start : rows.stop].tolist()
             told = _STATE_WORDS if column.key == _STATE_COLUMN else ("",) * len(_STATE_WORDS)
+            if column.gap_of:
+                return self._gaps(column, rows, texts, states)
             return [
                 Cell(text if state == _CURRENT else told[state], _STATE_LOOKS[state])
                 for text, state in zip(texts, states, strict=True)
@@ -101,6 +105,13 @@ class CellCache:
             return [self._mark(column, row, text) for row, text in zip(rows, texts, strict=True)]
         look = Look.COMPUTED if column.field is None else Look.ENTRY
         return [Cell(text, look) for text in texts]
+
+    def _gaps(self, column: Column, rows: range, texts: list[str], states: list[int]) -> list[Cell]:
+        off = beyond(column.gap_of, self._slate, self._results, slice(rows.start, rows.stop)).tolist()
+        return [
+            Cell(text if state == _CURRENT else "", Look.BEYOND if gap and state == _CURRENT else _STATE_LOOKS[state])
+            for text, state, gap in zip(texts, states, off, strict=True)
+        ]
 
     def _mark(self, column: Column, row: int, text: str) -> Cell:
         assert column.field is not None

@@ -73,6 +73,7 @@ class GridDelegate(QStyledItemDelegate):
             Look.PRICING: self._muted,
             Look.INCOMPLETE: self._amber,
             Look.REFUSED: self._brick,
+            Look.BEYOND: self._amber,
         }
 
     # --- painting

@@ -11,9 +11,11 @@ from spreadgui.book.changes import counted, set_fields
 from spreadgui.book.entries import EntryError, Value
 from spreadgui.desk.grid.cells import Cell, CellCache, Look
 from spreadgui.desk.workbench import Workbench
-from spreadgui.valuation.columns import SCREEN_COLUMNS, Column
+from spreadgui.valuation.column import Column
+from spreadgui.valuation.columns import SCREEN_COLUMNS
 from spreadgui.valuation.results import State
 from spreadgui.valuation.slate import RowArray, Succession
+from spreadgui.valuation.trust import tolerance_words
 from spreadgui.valuation.typed import read_typed, typed_text
 
 Index = QModelIndex | QPersistentModelIndex
@@ -29,7 +31,7 @@ _RIGHT = int(Qt.AlignmentFlag.AlignRight | Qt.AlignmentFlag.AlignVCenter)
 _LEFT = int(Qt.AlignmentFlag.AlignLeft | Qt.AlignmentFlag.AlignVCenter)
 _EDITABLE = Qt.ItemFlag.ItemIsEnabled | Qt.ItemFlag.ItemIsSelectable | Qt.ItemFlag.ItemIsEditable
 _READABLE = Qt.ItemFlag.ItemIsEnabled | Qt.ItemFlag.ItemIsSelectable
-_LOOK_WORDS = {Look.OWN: "own mark", Look.MARKED: "from Marks"}
+_LOOK_WORDS = {Look.OWN: "own mark", Look.MARKED: "from Marks", Look.BEYOND: "beyond the gap tolerance"}
 
 
 class GridModel(QAbstractTableModel):
@@ -44,6 +46,7 @@ class GridModel(QAbstractTableModel):
         self._told = range(told[0], told[-1] + 1)
         self._cells = CellCache(self.columns, workbench.slate, workbench.results)
         self._count = len(workbench.slate)
+        self._tolerance = workbench.book.gap_tolerance
         workbench.followed.connect(self._on_followed)
         workbench.priced.connect(self._on_priced)
 
@@ -122,7 +125,10 @@ class GridModel(QAbstractTableModel):
                 column.numbers(self._workbench.slate, self._workbench.results, slice(index.row(), index.row() + 1))[0]
             )
             value = used if np.isfinite(used) else None
-        return typed_text(column, value)
+        return typed_text(column, value, self._scale(column, index.row()))
+
+    def _scale(self, column: Column, row: int) -> float:
+        return column.scale_at(self._workbench.slate, row)
 
     def choices(self, index: Index) -> tuple[str, ...]:
         """The few values that a cell may take, or that fit best where it may take others; empty for none."""
@@ -139,7 +145,7 @@ class GridModel(QAbstractTableModel):
         """Why `text` cannot go into a cell, as one sentence; empty where it can."""
         column = self.columns[index.column()]
         try:
-            value = read_typed(column, text)
+            value = read_typed(column, text, self._scale(column, index.row()))
         except EntryError as error:
             return str(error)
         markets = {market.name for market in self._workbench.book.markets}
@@ -163,7 +169,7 @@ class GridModel(QAbstractTableModel):
                     raise EntryError(reason)
                 if text.strip() == self.typed(self.index(row, place)):
                     continue
-                cells.setdefault(row, {})[column.field.key] = read_typed(column, text)
+                cells.setdefault(row, {})[column.field.key] = read_typed(column, text, self._scale(column, row))
                 headings.append(column.heading.lower())
         if cells:
             named = words or counted(f"set {', '.join(dict.fromkeys(headings))}", len(cells))
@@ -174,6 +180,9 @@ class GridModel(QAbstractTableModel):
         cell, column = self.cell(index), self.columns[index.column()]
         if cell.look in (Look.INCOMPLETE, Look.REFUSED):
             return f"{cell.look.name.lower()}: {self._workbench.results.reason(index.row())}"
+        if cell.look is Look.BEYOND:
+            allowed = tolerance_words(self._workbench.slate)
+            return f"{cell.text}: beyond the book’s gap tolerance of {allowed} of the premium."
         if column.own:
             origin = (
                 "Own mark: typed into this row; clear it to return to Marks."
@@ -194,8 +203,12 @@ class GridModel(QAbstractTableModel):
 
     @Slot(object)
     def _on_followed(self, succession: Succession) -> None:
-        old_rows = succession.old_rows
+        old_rows, tolerance = succession.old_rows, succession.slate.book.gap_tolerance
         self._cells.stand_on(succession.slate)
+        if tolerance != self._tolerance:  # no number is another, but what is said of it may be
+            self._tolerance = tolerance
+            self._cells.forget()
+            self._changed(np.arange(self._count), self._told)
         if len(old_rows) == self._count and _in_place(old_rows):
             self._changed(np.flatnonzero(old_rows < 0), range(len(self.columns)))
             return

@@ -10,7 +10,7 @@ from spreadgui.desk.landscape.legend import Legend
 from spreadgui.desk.landscape.words import KEYS, PRICING, Words, subtitle_of
 from spreadgui.desk.look.pane import ElidedLabel, Pane
 from spreadgui.desk.look.theme import Theme, set_rank, set_tone, tabular
-from spreadgui.pricing.methods import METHODS
+from spreadgui.pricing.methods import LOGNORMAL_METHODS
 from spreadgui.valuation.surface import QUANTITIES, Surface, SurfaceRequest
 
 NOTHING = "Choose a position with two legs: a quantity of it is drawn here over both forwards."
@@ -31,7 +31,7 @@ class LandscapePane(Pane):
         self._shown: Surface | None = None
         self._faded = False
         self.quantities = _combo("Quantity", [(quantity.key, quantity.name, "") for quantity in QUANTITIES])
-        self.methods = _combo("Method", [(method.key, method.name, method.applies) for method in METHODS])
+        self.methods = _combo("Method", [(method.key, method.name, method.applies) for method in LOGNORMAL_METHODS])
         self.contours = Contours(theme)
         self.legend = Legend(theme)
         self._long_title, self._short_title, self._value_title = (_small() for _ in range(3))

@@ -94,7 +94,7 @@ class Words:
 
 def subtitle_of(surface: Surface) -> str:
     """Position, quantity, method, unit of any surface, drawn or not; a forward is the same by every method."""
-    by = "every method" if surface.kind == "forward" else method(surface.request.method).name
+    by = "every method" if surface.kind == "forward" else surface.method or method(surface.request.method).name
     quantity = quantity_of(surface.request.quantity).name.lower()
     return " · ".join(filter(None, (surface.subject, quantity, by, surface.unit)))
 

@@ -6,10 +6,11 @@ from typing import TYPE_CHECKING
 
 from PySide6.QtCore import QEvent, QRect, QSize, Qt, Signal, Slot
 from PySide6.QtGui import QAction, QGuiApplication, QResizeEvent
-from PySide6.QtWidgets import QFrame, QHBoxLayout, QScrollArea, QSizePolicy, QVBoxLayout, QWidget
+from PySide6.QtWidgets import QFrame, QHBoxLayout, QScrollArea, QSizePolicy, QToolButton, QVBoxLayout, QWidget
 
 from spreadgui.desk.look.pane import ElidedLabel, Figure, Pane
 from spreadgui.desk.look.theme import Theme, set_rank, set_tone
+from spreadgui.desk.panels.days_sheet import days_sheet
 from spreadgui.desk.panels.reading_sheets import (
     CAUTION,
     Headline,
@@ -17,6 +18,7 @@ from spreadgui.desk.panels.reading_sheets import (
     copied_reading,
     headlines,
     methods_sheet,
+    quote_line,
     reason_text,
     sensitivities_sheet,
 )
@@ -37,9 +39,9 @@ class ReadingPane(Pane):
     """The headline figures of a position, the table of methods, the table of sensitivities, and a caution.
 
     The figures and the caution stay in sight; the tables scroll where they do not fit. Where there is width for it, the
-    sensitivities to the two legs stand side by side. Tab goes from table to table, the arrow keys from cell to cell and
-    on from the first table into the second; Ctrl+C copies the table that has the keyboard, its context menu the whole
-    reading.
+    sensitivities to the two legs stand side by side. A strip can be unfolded into a table of its days. Tab goes from
+    table to table, the arrow keys from cell to cell and on from one table into the next; Ctrl+C copies the table that
+    has the keyboard, its context menu the whole reading.
     """
 
     _reading: Reading | None = None  # here already, since Qt may tell of a new font while the frame is being made
@@ -48,7 +50,14 @@ class ReadingPane(Pane):
         super().__init__("Reading", parent=parent)
         self._waiting = False
         self._headline = _HeadlineRow()
-        self._methods, self._sensitivities = SheetView(theme), SheetView(theme)
+        self._methods, self._sensitivities, self._days = SheetView(theme), SheetView(theme), SheetView(theme)
+        self._days.setAccessibleName("Days")
+        self._quote = ElidedLabel()
+        self._unfold = QToolButton()
+        self._unfold.setCheckable(True)
+        set_rank(self._quote, "small")
+        for part in (self._days, self._unfold, self._quote):
+            part.hide()
         self._roll = _Roll()
         self._caution = ElidedLabel(CAUTION)
         set_rank(self._caution, "small")
@@ -65,6 +74,9 @@ class ReadingPane(Pane):
             self.show_empty(reason_text(reading))
             return
         self._headline.set_figures(headlines(reading))
+        self._quote.set_text(quote_line(reading))
+        self._quote.setVisible(reading.quote is not None)
+        self._name_unfolding()
         self._fade(False)
         self.show_body()  # before the tables are fitted: only then is its size known
         self._fit()
@@ -106,11 +118,28 @@ class ReadingPane(Pane):
         if event.type() == QEvent.Type.FontChange:
             self._fit()
 
-    def _views(self) -> tuple[SheetView, SheetView]:
-        return self._methods, self._sensitivities
+    def unfolded(self) -> bool:
+        """Whether the days of a strip are shown."""
+        return self._unfold.isChecked() and not self._unfold.isHidden()
+
+    def _views(self) -> tuple[SheetView, ...]:
+        """The tables, the last of them only in use while a strip is unfolded."""
+        return self._methods, self._sensitivities, self._days
+
+    @Slot()
+    def _on_unfold(self) -> None:
+        self._name_unfolding()
+        self._fit()
+
+    def _name_unfolding(self) -> None:
+        days = 0 if self._reading is None else len(self._reading.days)
+        self._unfold.setVisible(days > 0)
+        self._unfold.setText(f"{'Fold' if self._unfold.isChecked() else 'Unfold'} {days} days")
 
     def _join(self) -> None:
         self._roll.resized.connect(self._fit)
+        self._unfold.toggled.connect(self._on_unfold)
+        self._unfold.setToolTip("The options of the strip, one row for each of its days.")
         for view in self._views():
             view.stepped_out.connect(self._step)
             view.walked.connect(self._keep_in_sight)
@@ -126,8 +155,10 @@ class ReadingPane(Pane):
         column = QVBoxLayout(tables)
         column.setContentsMargins(0, 0, 0, 0)
         column.setSpacing(_GAP)
-        for view in self._views():
-            column.addWidget(view)
+        column.addWidget(self._methods)
+        column.addWidget(self._sensitivities)
+        column.addWidget(self._unfold, 0, Qt.AlignmentFlag.AlignLeft)
+        column.addWidget(self._days)
         column.addStretch(1)
         self._roll.setWidget(tables)
         body = QWidget()
@@ -136,6 +167,7 @@ class ReadingPane(Pane):
         whole.setContentsMargins(0, 0, 0, 0)
         whole.setSpacing(_GAP)
         whole.addWidget(self._headline)
+        whole.addWidget(self._quote)
         whole.addWidget(self._roll, 1)
         whole.addWidget(self._caution)
         self.set_body(body)
@@ -159,29 +191,39 @@ class ReadingPane(Pane):
             pairs = sensitivities_sheet(reading, paired=False)
         if self._methods.needed_width(methods) > self._room((methods, pairs)):
             methods = methods_sheet(reading, remarks=False)
-        self._show_sheets((methods, pairs))
+        self._show_sheets((methods, pairs, *self._day_sheets(reading, (methods, pairs))))
 
-    def _show_sheets(self, sheets: tuple[Sheet, Sheet]) -> None:
+    def _day_sheets(self, reading: Reading, others: tuple[Sheet, ...]) -> tuple[Sheet, ...]:
+        """The days of an unfolded strip, with all its columns if they fit."""
+        if not self.unfolded():
+            return ()
+        days = days_sheet(reading, wide=True)
+        fits = self._days.needed_width(days) <= self._room((*others, days))
+        return (days if fits else days_sheet(reading, wide=False),)
+
+    def _show_sheets(self, sheets: tuple[Sheet, ...]) -> None:
         rows = sum(len(sheet.rows) for sheet in sheets)
         spare = max(self._roll.height() - self._height_of(sheets), 0) // rows
-        for view, sheet in zip(self._views(), sheets, strict=True):
+        self._days.setVisible(len(sheets) == len(self._views()))
+        for view, sheet in zip(self._views(), sheets, strict=False):
             view.show_sheet(sheet, self._room(sheets), min(spare, _MOST_ROW_SPARE))
 
-    def _room(self, sheets: tuple[Sheet, Sheet]) -> int:
+    def _room(self, sheets: tuple[Sheet, ...]) -> int:
         """The width for the tables, less the scroll bar if these sheets need one."""
         bar = self._roll.verticalScrollBar().sizeHint().width()
         return self._roll.width() - (bar if self._height_of(sheets) > self._roll.height() else 0)
 
-    def _height_of(self, sheets: tuple[Sheet, Sheet]) -> int:
-        pairs = zip(self._views(), sheets, strict=True)
-        return sum(view.needed_height(sheet) for view, sheet in pairs) + _GAP
+    def _height_of(self, sheets: tuple[Sheet, ...]) -> int:
+        pairs = zip(self._views(), sheets, strict=False)
+        unfolding = 0 if self._unfold.isHidden() else self._unfold.sizeHint().height() + _GAP
+        return sum(view.needed_height(sheet) for view, sheet in pairs) + _GAP * (len(sheets) - 1) + unfolding
 
     @Slot(int)
     def _step(self, step: int) -> None:
-        """An arrow key went past the end of a table: on into the other one, or to the end of what there is to see."""
+        """An arrow key went past the end of a table: on into the next one, or to the end of what there is to see."""
         source = self.sender()
-        views = self._views()
-        place = (0 if source is views[0] else 1) + step
+        views = [view for view in self._views() if not view.isHidden()]
+        place = next(number for number, view in enumerate(views) if view is source) + step
         if not 0 <= place < len(views):
             bar = self._roll.verticalScrollBar()
             bar.setValue(bar.maximum() if step > 0 else bar.minimum())

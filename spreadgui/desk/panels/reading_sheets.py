@@ -7,6 +7,7 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
+from spreadgui.desk.panels.days_sheet import copied_days
 from spreadgui.desk.panels.sheets import (
     DASH,
     Cell,
@@ -18,10 +19,10 @@ from spreadgui.desk.panels.sheets import (
     signed_text,
     tabbed,
 )
-from spreadgui.valuation.shown import MINUS, number_text
+from spreadgui.valuation.shown import MINUS, number_text, trimmed_text
 
 if TYPE_CHECKING:  # its module loads the formulas, which must not hold up the first paint of the window
-    from spreadgui.valuation.reading import MethodReading, Reading, SensitivityReading
+    from spreadgui.valuation.reading import MethodReading, QuoteReading, Reading, SensitivityReading
 
 CAUTION = "A model value is no quote."
 # The rows of the paired arrangement: the sensitivity to the long leg, or to both, and the one to the short leg.
@@ -207,8 +208,29 @@ def _sensitivity_copy(row: SensitivityReading) -> tuple[str, ...]:
     return (row.name, row.scaling, *numbers, row.unit, row.absence)
 
 
+def quote_line(reading: Reading) -> str:
+    """What the quoted premium says, as one sentence; empty without one."""
+    quote = reading.quote
+    if quote is None:
+        return ""
+    unit = f" {reading.unit}".rstrip()
+    against = f"{signed_text(quote.gap, shared_decimals([quote.gap], 3, 2, 6))}{unit}"
+    money = f"{signed_text(quote.position_gap, money_decimals(quote.position_gap))} {reading.currency}".rstrip()
+    return f"Quoted {trimmed_text(quote.premium, 6, 2)}: {_implied_words(quote)}; {against}, {money} against the value."
+
+
+def _implied_words(quote: QuoteReading) -> str:
+    """The correlation behind a premium, or why there is none."""
+    if not math.isfinite(quote.implied):
+        return f"implied correlation {quote.status}"
+    bar = f" ± {number_text(100 * quote.error, 2)}" if math.isfinite(quote.error) else ""
+    doubt = "" if quote.status == "solved" else f", {quote.status}"
+    implied, marked = number_text(100 * quote.implied, 2), trimmed_text(100 * quote.marked, 2)
+    return f"implied correlation {implied}{bar} %{doubt} (marked {marked})"
+
+
 def copied_reading(reading: Reading) -> str:
-    """The whole reading as tab-separated text: the subject, the figures, both tables."""
+    """The whole reading as tab-separated text: the subject, the figures, all tables, the days of a strip as well."""
     if reading.reason:
         return tabbed([(reading.subject,), (reason_text(reading),)])
     figures = (
@@ -218,7 +240,9 @@ def copied_reading(reading: Reading) -> str:
         ("Time value", plain_number(reading.time_value), reading.unit),
     )
     tables = (methods_sheet(reading, remarks=True).copied, sensitivities_sheet(reading, paired=False).copied)
-    return "\n".join([tabbed([(reading.subject,), *figures]), *(tabbed(table) for table in tables)])
+    days = (copied_days(reading),) if reading.days else ()
+    quote = [(quote_line(reading),)] if reading.quote else []
+    return "\n".join([tabbed([(reading.subject,), *figures, *quote]), *(tabbed(table) for table in (*tables, *days))])
 
 
 def reason_text(reading: Reading) -> str:
