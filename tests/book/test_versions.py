@@ -59,3 +59,13 @@ def test_a_third_version_is_refused_in_a_sentence() -> None:
     assert str(refused.value.faults[0]) == (
         "this book is of version 3, written by a newer program; this one reads up to version 2"
     )
+
+
+def test_a_wrong_holiday_is_told_at_its_place() -> None:
+    raw = json.loads(FIRST.read_text()) | {"version": 2}
+    raw["markets"][0]["holidays"] = ["2026-12-25", "Christmas"]
+    with pytest.raises(BookError) as refused:
+        parse_book(json.dumps(raw).encode())
+    assert [str(fault) for fault in refused.value.faults] == [
+        'markets[0].holidays[1]: expected a day written as "2027-01-15", got "Christmas"'
+    ]
