@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 
 from spreadgui.book.records import Book, Position
 from spreadgui.market.contracts import Readiness, ResolvedPosition, Trouble, resolve
+from spreadgui.market.many import resolve_many
 from spreadgui.market.quotes import Quotes
 from spreadgui.market.strips import Strip
 
@@ -42,6 +43,8 @@ INPUTS = (
 )
 _INPUT_ROW = {key: row for row, key in enumerate(INPUTS)}
 _NOT_KEPT = -1
+# From so many new rows on it pays to look each contract up once and to do the rest by columns.
+MANY = 32
 
 
 @dataclass(frozen=True)
@@ -92,7 +95,9 @@ def follow(previous: Slate | None, book: Book, revision: int) -> Succession:
     old_rows = _old_rows(previous, book)
     columns = _Columns.taken_over(previous, old_rows)
     quotes = previous.quotes if previous is not None and _same_marks(previous.book, book) else Quotes.of(book)
-    for row in np.flatnonzero(old_rows == _NOT_KEPT).tolist():
+    fresh = np.flatnonzero(old_rows == _NOT_KEPT)
+    left = columns.put_many(fresh, book, quotes) if len(fresh) >= MANY else fresh
+    for row in left.tolist():
         position = book.positions[row]
         columns.put(row, position, resolve(position, quotes, book.valuation_date, book.zero_rate))
     old_rows.setflags(write=False)
@@ -171,6 +176,22 @@ class _Columns:
         columns.troubles = {row: told for old, told in previous.troubles.items() for row in new_rows.get(old, ())}
         return columns
 
+    def put_many(self, rows: RowArray, book: Book, quotes: Quotes) -> RowArray:
+        """The positions at `rows` that can be resolved by columns; gives the rows that are left."""
+        positions = [book.positions[row] for row in rows.tolist()]
+        many = resolve_many(positions, quotes, book.valuation_date, book.zero_rate)
+        plain = np.flatnonzero(many.plain)
+        chosen, some = rows[plain], [positions[place] for place in plain.tolist()]
+        for line, key in enumerate(INPUTS):
+            column = many.numbers[key][plain] if key in many.numbers else _typed_column(some, key)
+            self.inputs[line, chosen] = column
+        kinds = np.array([KINDS.index(position.kind) for position in some], dtype=np.int8)
+        ready = np.full(len(some), Readiness.READY, dtype=np.int8)
+        self.codes[:, chosen] = np.stack([kinds, many.shape[plain], many.law[plain], ready])
+        for row, place in zip(chosen.tolist(), plain.tolist(), strict=True):
+            self.units[row] = many.units[place]
+        return rows[~many.plain]
+
     def put(self, row: int, position: Position, resolved: ResolvedPosition) -> None:
         """A position that has just been resolved."""
         self.inputs[:, row], self.codes[:, row] = _inputs_of(position, resolved), _codes_of(position, resolved)
@@ -195,6 +216,14 @@ def _descendants(old_rows: RowArray, of: Sequence[int]) -> dict[int, list[int]]:
     for row in np.flatnonzero(np.isin(old_rows, of)).tolist() if of else ():
         found.setdefault(int(old_rows[row]), []).append(row)
     return found
+
+
+def _typed_column(positions: Sequence[Position], key: str) -> FloatArray:
+    """One of INPUTS that stands in the positions themselves."""
+    if key == "quantity":
+        return np.array([one.quantity if one.side == "long" else -(one.quantity or 0.0) for one in positions])
+    field = {"ratio_long": "long_ratio", "ratio_short": "short_ratio"}.get(key, key)
+    return np.array([getattr(position, field) for position in positions], dtype=np.float64)
 
 
 def _inputs_of(position: Position, resolved: ResolvedPosition) -> tuple[float, ...]:
