@@ -18,7 +18,7 @@ from spreadgui.valuation.price import price_lines, price_rows
 from spreadgui.valuation.results import IMPLIED_WORDS, SENSITIVITIES, State, output_row
 from spreadgui.valuation.shown import trimmed_text
 from spreadgui.valuation.slate import INPUTS, KINDS, FloatArray, Slate
-from spreadgui.valuation.trust import LEAST_PREMIUM
+from spreadgui.valuation.trust import LEAST_PREMIUM, tolerance_words
 
 # What stands for the currency's units where a market's unit does not say what is counted.
 NAMELESS_UNIT = "units"
@@ -294,6 +294,8 @@ def _method_reading(slate: Slate, row: int, method: Method, outputs: FloatArray)
         gap = value - reference
         enough = reference > LEAST_PREMIUM * max(map(abs, _folded_forwards(slate, row)))
         share, remark = (gap / reference, "") if enough else (_NAN, "premium too small for a share")
+        if abs(share) > slate.book.gap_tolerance:
+            remark = f"beyond {tolerance_words(slate)}"
     return MethodReading(
         method.key, method.name, value, gap, share, remark,
         position_gap=float(slate.values("quantity")[row]) * gap,

@@ -87,13 +87,13 @@ def row_words(slate: Slate, results: LiveResults, row: int) -> str:
     off = [method for method in CLOSED_FORMS if beyond(method.key, slate, results, here)[0]]
     if not off:
         return f"within {tolerance_words(slate)}"
-    return "; ".join(_beyond_words(slate, results, method, here) for method in off)
-
-
-def _beyond_words(slate: Slate, results: LiveResults, method: Method, here: slice) -> str:
-    share = float(gap_shares(method.key, slate, results, here)[0])
-    words = f"{method.name} beyond, {trimmed_text(100.0 * share, 2)} %"
-    return f"value rests on {words}" if method.key == slate.book.method else words
+    # What the value rests on comes first.
+    off.sort(key=lambda method: method.key != slate.book.method)
+    lead = "value beyond: " if off[0].key == slate.book.method else "beyond: "
+    return lead + ", ".join(
+        f"{method.name} {trimmed_text(100.0 * float(gap_shares(method.key, slate, results, here)[0]), 2)} %"
+        for method in off
+    )
 
 
 def tolerance_words(slate: Slate) -> str:

@@ -36,7 +36,7 @@ def test_another_tolerance_marks_other_rows_in_words_and_colour_and_undo_takes_i
     settle(qtbot, window)
     assert window.workbench.book.gap_tolerance == 1e-6
     assert model.cell(model.index(1, place)).look is Look.BEYOND
-    assert "Kirk beyond" in model.text(1, words)
+    assert "beyond: Kirk" in model.text(1, words)
     assert "beyond 0.0001 %" in window.status.text()
     assert "beyond the gap tolerance" in model.spoken(model.index(1, place))
     window.acts.actions["undo"].trigger()

@@ -19,7 +19,7 @@ _NARROWEST, _WIDEST = 48, 210
 _SAMPLED_ROWS = 64
 _HORIZONTAL = Qt.Orientation.Horizontal
 # Computed columns are empty when the widths are set; this is room for the numbers to come.
-_LEAST = {"position_value": 96}
+_LEAST = {"position_value": 96, "formula_check": 210, "implied_status": 96}
 _LEAST_COMPUTED = 84
 _PADDING = 16
 EMPTY = "No positions yet. Insert a row to enter the first one, or open a book."

@@ -17,12 +17,16 @@ class _Column(NamedTuple):
     digits: int
     least: int
     most: int
-    always: bool = False
+    rank: int
 
 
-def days_sheet(reading: Reading, *, wide: bool) -> Sheet:
-    """The days of a strip; without `wide` only the day, its exercise and what it is worth."""
-    columns = [column for column in _columns(reading) if wide or column.always]
+# How many of the columns a sheet may leave out for want of room: none, what a day is valued by, the deltas too.
+RANKS = (3, 2, 1)
+
+
+def days_sheet(reading: Reading, rank: int = RANKS[0]) -> Sheet:
+    """The days of a strip; of the lowest of RANKS only the day, its exercise and what it is worth."""
+    columns = [column for column in _columns(reading) if column.rank <= rank]
     decimals = [
         shared_decimals([column.number(day) for day in reading.days], column.digits, column.least, column.most)
         for column in columns
@@ -58,24 +62,24 @@ def _columns(reading: Reading) -> list[_Column]:
     vol, percent = ("absolute", 1.0) if reading.absolute_vols else ("% a year", 100.0)
     tip = "What the variance up to this day's exercise comes to: the mark's before the month, the daily one inside it."
     return [
-        _Column(Heading(f"Vol long\n{vol}", number=True, tip=tip), lambda day: percent * day.vol_long, 4, 1, 2),
-        _Column(Heading(f"Vol short\n{vol}", number=True, tip=tip), lambda day: percent * day.vol_short, 4, 1, 2),
-        _Column(Heading("Correlation\n%", number=True, tip=tip), lambda day: 100.0 * day.correlation, 4, 1, 2),
+        _Column(Heading(f"Vol long\n{vol}", number=True, tip=tip), lambda day: percent * day.vol_long, 4, 1, 2, 3),
+        _Column(Heading(f"Vol short\n{vol}", number=True, tip=tip), lambda day: percent * day.vol_short, 4, 1, 2, 3),
+        _Column(Heading("Correlation\n%", number=True, tip=tip), lambda day: 100.0 * day.correlation, 4, 1, 2, 3),
         _Column(
             Heading(f"Unit value\n{reading.unit}".strip(), number=True, tip="Value of one unit of this day's payoff."),
-            lambda day: day.unit_value, 5, 3, 6, True,
+            lambda day: day.unit_value, 5, 3, 6, 1,
         ),
         _Column(
             Heading(f"Value\n{reading.currency}".strip(), number=True, tip="Unit value times the day's quantity."),
-            lambda day: day.position_value, 3, 0, 2, True,
+            lambda day: day.position_value, 3, 0, 2, 1,
         ),
         _Column(
             Heading("Delta long\nposition", number=True, tip="For the day's quantity, in the long market's units."),
-            lambda day: day.delta_long, 3, 0, 2,
+            lambda day: day.delta_long, 3, 0, 2, 2,
         ),
         _Column(
             Heading("Delta short\nposition", number=True, tip="For the day's quantity, in the short market's units."),
-            lambda day: day.delta_short, 3, 0, 2,
+            lambda day: day.delta_short, 3, 0, 2, 2,
         ),
     ]  # fmt: skip
 

@@ -10,7 +10,7 @@ from PySide6.QtWidgets import QFrame, QHBoxLayout, QScrollArea, QSizePolicy, QTo
 
 from spreadgui.desk.look.pane import ElidedLabel, Figure, Pane
 from spreadgui.desk.look.theme import Theme, set_rank, set_tone
-from spreadgui.desk.panels.days_sheet import days_sheet
+from spreadgui.desk.panels.days_sheet import RANKS, days_sheet
 from spreadgui.desk.panels.reading_sheets import (
     CAUTION,
     Headline,
@@ -194,12 +194,12 @@ class ReadingPane(Pane):
         self._show_sheets((methods, pairs, *self._day_sheets(reading, (methods, pairs))))
 
     def _day_sheets(self, reading: Reading, others: tuple[Sheet, ...]) -> tuple[Sheet, ...]:
-        """The days of an unfolded strip, with all its columns if they fit."""
+        """The days of an unfolded strip, with as many of its columns as fit."""
         if not self.unfolded():
             return ()
-        days = days_sheet(reading, wide=True)
-        fits = self._days.needed_width(days) <= self._room((*others, days))
-        return (days if fits else days_sheet(reading, wide=False),)
+        sheets = [days_sheet(reading, rank) for rank in RANKS]
+        fitting = (days for days in sheets if self._days.needed_width(days) <= self._room((*others, days)))
+        return (next(fitting, sheets[-1]),)
 
     def _show_sheets(self, sheets: tuple[Sheet, ...]) -> None:
         rows = sum(len(sheet.rows) for sheet in sheets)
