@@ -8,12 +8,14 @@ import spreadgui
 
 CAUTIONS = (
     "A model value is no quote: nobody has offered to deal at it.",
-    "Every position is valued as exercised once, on its expiry (European exercise).",
-    "Both forwards are taken as lognormal, with volatilities and a correlation that stay constant to the expiry. "
-    "Prices that jump, spike or fall below zero do not follow that law.",
-    "A closed form can be wrong by more than a bid-offer spread; the Reading shows its gap against the Yardstick. "
+    "Every option, and every day of a strip, is valued as exercised once, on its expiry (European exercise).",
+    "Forwards are taken as lognormal, as lognormal with a shift, or as normal, whichever their market says, with "
+    "volatilities and a correlation that stay constant. Prices that jump and spike follow none of these laws, and the "
+    "choice of the law alone can move a value by more than any formula gap.",
+    "A closed form can be wrong by more than a bid-offer spread; grid and Reading show its gap against the Yardstick. "
     "The Yardstick is exact for the model, not for the market.",
-    "Volatilities and above all correlations are estimates; the value moves with them.",
+    "Volatilities and above all correlations are estimates; the value moves with them. An implied correlation holds "
+    "only with the law and the volatilities it was backed out with.",
     "Independent validation and the risk policy of your desk come before any figure shown here.",
 )
 
