@@ -44,7 +44,22 @@ class Legs(NamedTuple):
     swapped: NDArray[np.bool_] | None
 
 
-def orient(block: Sequence[Array], kind: str, work: Array, role_exchange: bool = True) -> Legs:
+class Turned(NamedTuple):
+    """One block after role exchange, before any formula: what `Legs` calls by the same names, and the expiry."""
+
+    first: Array
+    second: Array
+    strike: Array
+    vol_first: Array
+    vol_second: Array
+    correlation: Array
+    expiry: Array
+    discount: Array
+    sign: Array
+    swapped: NDArray[np.bool_] | None
+
+
+def turn(block: Sequence[Array], kind: str, role_exchange: bool = True) -> Turned:
     """The block with every strike at zero or above; with `role_exchange` False as it was given."""
     first, second, strike, vol_first, vol_second, correlation, expiry, discount = block
     sign = np.array([1.0 if kind == "call" else -1.0])
@@ -55,6 +70,14 @@ def orient(block: Sequence[Array], kind: str, work: Array, role_exchange: bool =
         vol_first, vol_second = np.where(swapped, vol_second, vol_first), np.where(swapped, vol_first, vol_second)
         sign = np.where(swapped, -sign, sign)
         strike = np.abs(strike)
+    return Turned(first, second, strike, vol_first, vol_second, correlation, expiry, discount, sign, swapped)
+
+
+def orient(block: Sequence[Array], kind: str, work: Array, role_exchange: bool = True) -> Legs:
+    """The turned block with its deviations to expiry, which take the first `LEG_ROWS` of the scratch space."""
+    first, second, strike, vol_first, vol_second, correlation, expiry, discount, sign, swapped = turn(
+        block, kind, role_exchange
+    )
     root_time = np.sqrt(expiry, out=work[0])
     deviation_first = np.multiply(vol_first, root_time, out=work[1])
     deviation_second = np.multiply(vol_second, root_time, out=work[2])
@@ -74,7 +97,7 @@ def orient(block: Sequence[Array], kind: str, work: Array, role_exchange: bool =
     )
 
 
-def hand_back(out: Array, legs: Legs) -> None:
+def hand_back(out: Array, legs: Legs | Turned) -> None:
     """Turn results per oriented leg, undiscounted, into discounted results per leg as the caller named them, in place.
 
     The order is that of `Sensitivities`; a value alone is one layer. Adding zero turns a negative zero into zero.
@@ -95,8 +118,11 @@ def still_rows(total: Array) -> NDArray[np.intp]:
     return np.flatnonzero(total <= STILL) if total.min() <= STILL else np.empty(0, dtype=np.intp)
 
 
-def combined(one: Array, other: Array, correlation: Array, out: Array, spare: Array) -> Array:
-    """sqrt(one^2 - 2 correlation one other + other^2) into `out`, at least `STILL`.
+def combined(
+    one: Array, other: Array, correlation: Array, out: Array, spare: Array, expiry: Array | None = None
+) -> Array:
+    """sqrt(one^2 - 2 correlation one other + other^2) into `out`, at least `STILL`; with an `expiry` the two are a
+    year's and the root is taken of their sum until then, one pass and one root less than with both carried there.
 
     Summed so that nothing cancels: the squared difference of the two deviations, plus what their correlation falls
     short of one. The plain sum of squares loses all digits, and can turn negative, as the correlation nears one.
@@ -104,16 +130,23 @@ def combined(one: Array, other: Array, correlation: Array, out: Array, spare: Ar
     np.subtract(1.0, correlation, out=spare)
     spare *= one
     spare *= other
-    spare *= 2.0
+    spare += spare
     np.subtract(one, other, out=out)
     out *= out
     out += spare
+    if expiry is not None:
+        out *= expiry
     np.sqrt(out, out=out)
     return np.maximum(out, STILL, out=out)
 
 
+def all_calls(sign: Array) -> bool:
+    """Whether no row of the block needs its sign."""
+    return bool(sign.size == 1 and sign[0] == 1.0)
+
+
 def signed_tail(sign: Array, point: Array, out: Array) -> Array:
     """N(sign point) into `out`, without a product where all rows are calls."""
-    if sign.size == 1 and sign[0] == 1.0:
+    if all_calls(sign):
         return np.asarray(ndtr(point, out=out))
     return np.asarray(ndtr(np.multiply(sign, point, out=out), out=out))

@@ -85,7 +85,7 @@ def _value(kind: str, role_exchange: bool, block: Sequence[Array], out: Array, w
     _, _, g, mixing, log_ratio = _correction(legs, lump, total)
     total += mixing * g * log_ratio
     np.maximum(total, STILL, out=total)
-    ratio_option.value(legs.first, lump, total, legs.sign, out[0], work[-2:])
+    ratio_option.value(legs.first, lump, total, legs.sign, out[0], work[-1:])
     hand_back(out, legs)
 
 
