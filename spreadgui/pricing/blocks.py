@@ -33,9 +33,11 @@ Guard = Callable[[Sequence[Array]], None]
 Piece = tuple[int | slice, ...]
 
 # Measured on a machine with half a megabyte of second-level cache: a value with its four buffers runs best at 32,768
-# rows (16,384 cost 4 % more, 8,192 a fifth), sensitivities with their twenty-odd at 8,192.
+# rows (16,384 cost 4 % more, 8,192 a fifth), sensitivities with their twenty-odd at 16,384; threads, which pass the
+# interpreter's lock at every call, lose a third at 8,192.
 BLOCK_ROWS = 8192
 VALUE_BLOCK_ROWS = 32768
+SENSITIVITY_BLOCK_ROWS = 16384
 TASK_ROWS = 65536
 
 

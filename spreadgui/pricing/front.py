@@ -8,7 +8,7 @@ from functools import partial
 
 from numpy.typing import ArrayLike
 
-from spreadgui.pricing.blocks import BLOCK_ROWS, VALUE_BLOCK_ROWS, Kernel, OutsideError, run
+from spreadgui.pricing.blocks import SENSITIVITY_BLOCK_ROWS, VALUE_BLOCK_ROWS, Kernel, OutsideError, run
 from spreadgui.pricing.inputs import (
     Array,
     SpreadColumns,
@@ -93,7 +93,7 @@ def differentiate(
     *,
     check: Check | None = None,
     scratch: int = 0,
-    block_rows: int = BLOCK_ROWS,
+    block_rows: int = SENSITIVITY_BLOCK_ROWS,
 ) -> Sensitivities:
     """The method's value and derivatives of shape given by the arguments; the forward needs no method."""
     columns, shape, long = _admit(given, kind, check)

@@ -102,14 +102,18 @@ def hand_back(out: Array, legs: Legs | Turned) -> None:
 
     The order is that of `Sensitivities`; a value alone is one layer. Adding zero turns a negative zero into zero.
     """
-    for layer in out:
-        layer *= legs.discount
-        layer += 0.0
+    out *= legs.discount
+    name_legs(out, legs)
+
+
+def name_legs(out: Array, legs: Legs | Turned) -> None:
+    """Turn discounted results per oriented leg into results per leg as the caller named them, in place."""
+    out += 0.0
     if legs.swapped is None or len(out) == 1:
         return
     for one, other in ((1, 2), (3, 4), (6, 7)):
         kept = np.where(legs.swapped, out[other], out[one])
-        out[other] = np.where(legs.swapped, out[one], out[other])
+        np.copyto(out[other], out[one], where=legs.swapped)
         out[one] = kept
 
 
