@@ -23,6 +23,7 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import ArrayLike
 
+from spreadgui.pricing.blocks import Kernel
 from spreadgui.pricing.front import differentiate, price
 from spreadgui.pricing.inputs import Array
 from spreadgui.pricing.kirk import check_published_strike
@@ -131,7 +132,7 @@ def _worth(legs: Legs, lump: Array, tails: Array, out: Array, spare: Array) -> N
 
 
 def _value(kind: str, role_exchange: bool, block: Sequence[Array], out: Array, work: Array) -> None:
-    legs = orient(block, kind, work, role_exchange)
+    legs = orient(block, kind, work, role_exchange, spread=False)
     points = work[LEG_ROWS : LEG_ROWS + 3]
     rule = _follow(legs, points, work[LEG_ROWS + 3 :])
     signed_tail(legs.sign, points, points)
@@ -148,7 +149,7 @@ def _sensitivities(kind: str, role_exchange: bool, block: Sequence[Array], out: 
     over the three terms. In p: dv/dp = -behind, d2v/dp2 = (1 - behind^2)/v =: bend, and every m_i has one for its
     second derivative, so that c1 = behind (d1/v - 1), c3 = (p + behind d3)/v and c2 = c3 - b bend.
     """
-    legs = orient(block, kind, work, role_exchange)
+    legs = orient(block, kind, work, role_exchange, spread=False)
     rows = work[LEG_ROWS:]
     terms = _Terms(*(rows[start : start + 3] for start in range(0, 15, 3)))
     rule, spare = _follow(legs, terms.points, rows[15:21]), rows[21]
@@ -306,6 +307,11 @@ def _by_forwards(legs: Legs, rule: _Rule, sums: _Sums, terms: _Terms, out: Array
     out[3] *= inverse
     out[3] *= per_first
     out[3] *= per_first
+
+
+def value_kernel(kind: str) -> tuple[Kernel, int]:
+    """What `value` runs over a block, and the scratch rows it wants; columns of any shapes that broadcast."""
+    return partial(_value, kind, True), VALUE_SCRATCH
 
 
 def value(

@@ -73,14 +73,20 @@ def turn(block: Sequence[Array], kind: str, role_exchange: bool = True) -> Turne
     return Turned(first, second, strike, vol_first, vol_second, correlation, expiry, discount, sign, swapped)
 
 
-def orient(block: Sequence[Array], kind: str, work: Array, role_exchange: bool = True) -> Legs:
-    """The turned block with its deviations to expiry, which take the first `LEG_ROWS` of the scratch space."""
+def orient(block: Sequence[Array], kind: str, work: Array, role_exchange: bool = True, *, spread: bool = True) -> Legs:
+    """The turned block with its deviations to expiry, which take the first `LEG_ROWS` of the scratch space; unless
+    `spread`, what depends on no long column stays as short as its columns are."""
     first, second, strike, vol_first, vol_second, correlation, expiry, discount, sign, swapped = turn(
         block, kind, role_exchange
     )
-    root_time = np.sqrt(expiry, out=work[0])
-    deviation_first = np.multiply(vol_first, root_time, out=work[1])
-    deviation_second = np.multiply(vol_second, root_time, out=work[2])
+    size = 0 if spread else work[0].size
+    root_time = np.sqrt(expiry, out=work[0] if expiry.size >= size else None)
+    deviation_first = np.multiply(
+        vol_first, root_time, out=work[1] if max(vol_first.size, root_time.size) >= size else None
+    )
+    deviation_second = np.multiply(
+        vol_second, root_time, out=work[2] if max(vol_second.size, root_time.size) >= size else None
+    )
     return Legs(
         first,
         second,
