@@ -36,6 +36,7 @@ from spreadgui.pricing.legs import (
     hand_back,
     name_legs,
     orient,
+    room,
     signed_tail,
     still_rows,
 )
@@ -92,19 +93,19 @@ def _follow(legs: Legs, points: Array, work: Array) -> _Rule:
     np.divide(legs.second, lump, out=share)
     p = np.multiply(share, b, out=d1)
     # v^2 is summed as in `legs.combined`; the parts of the sum serve both projections.
-    short = np.subtract(1.0, legs.correlation, out=d2)
+    short = np.subtract(1.0, legs.correlation, out=room(d2, legs.correlation))
     gap = np.subtract(a, p, out=ahead)
-    np.multiply(short, a, out=behind)
-    short *= p
-    np.multiply(short, a, out=d3)
+    short_first = np.multiply(short, a, out=room(behind, short, a))
+    short_second = np.multiply(short, p, out=d2)
+    np.multiply(short_second, a, out=d3)
     d3 += d3
     np.multiply(gap, gap, out=total)
     total += d3
     np.sqrt(total, out=total)
     np.maximum(total, STILL, out=total)
     np.divide(1.0, total, out=inverse)
-    np.subtract(gap, behind, out=behind)
-    ahead += short
+    np.subtract(gap, short_first, out=behind)
+    ahead += short_second
     ahead *= inverse
     behind *= inverse
     np.divide(legs.first, lump, out=d1)

@@ -73,20 +73,26 @@ def turn(block: Sequence[Array], kind: str, role_exchange: bool = True) -> Turne
     return Turned(first, second, strike, vol_first, vol_second, correlation, expiry, discount, sign, swapped)
 
 
+def room(row: Array, *columns: Array) -> Array | None:
+    """The row as the place for a result of these columns, None where all of them are shorter: their result is then
+    best left as short, in a place of its own."""
+    return row if max(column.size for column in columns) >= row.size else None
+
+
 def orient(block: Sequence[Array], kind: str, work: Array, role_exchange: bool = True, *, spread: bool = True) -> Legs:
     """The turned block with its deviations to expiry, which take the first `LEG_ROWS` of the scratch space; unless
     `spread`, what depends on no long column stays as short as its columns are."""
     first, second, strike, vol_first, vol_second, correlation, expiry, discount, sign, swapped = turn(
         block, kind, role_exchange
     )
-    size = 0 if spread else work[0].size
-    root_time = np.sqrt(expiry, out=work[0] if expiry.size >= size else None)
-    deviation_first = np.multiply(
-        vol_first, root_time, out=work[1] if max(vol_first.size, root_time.size) >= size else None
+    rows = (
+        list(work[:LEG_ROWS])
+        if spread
+        else [room(work[0], expiry), room(work[1], vol_first, expiry), room(work[2], vol_second, expiry)]
     )
-    deviation_second = np.multiply(
-        vol_second, root_time, out=work[2] if max(vol_second.size, root_time.size) >= size else None
-    )
+    root_time = np.sqrt(expiry, out=rows[0])
+    deviation_first = np.multiply(vol_first, root_time, out=rows[1])
+    deviation_second = np.multiply(vol_second, root_time, out=rows[2])
     return Legs(
         first,
         second,

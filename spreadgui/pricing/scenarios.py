@@ -168,15 +168,17 @@ def _leg(contracts: Array, places: Indices, ratio: Array | None) -> Array:
 def _values(
     method: Method, kind: str, rows: _Rows, contracts: Array, formula: tuple[Kernel, int] | None, work: Array
 ) -> Array:
-    """The values of some positions in every scenario of the block, (positions, scenarios), in the scratch space."""
+    """The weighted values of some positions in the scenarios of the block, (positions, scenarios)."""
     legs = (
         _leg(contracts, rows.long_contract, rows.long_ratio),
         _leg(contracts, rows.short_contract, rows.short_ratio),
     )
     if formula is None:
-        return method.value(*legs, *rows.terms, kind=kind)
-    long_rows = contracts.shape[1] >= SHORT_ROW
-    terms = rows.terms if long_rows else tuple(np.repeat(term, contracts.shape[1], axis=1) for term in rows.terms)
+        return method.value(*legs, *rows.terms, kind=kind) * rows.weight
+    # The kernel's last act is to discount; the weight goes along.
+    terms = *rows.terms[:-1], rows.terms[-1] * rows.weight
+    if contracts.shape[1] < SHORT_ROW:
+        terms = tuple(np.repeat(term, contracts.shape[1], axis=1) for term in terms)
     values: Array = work[0]
     formula[0]((*legs, *terms), work[:1], work[1:])
     return values
@@ -206,7 +208,6 @@ def _total(method: Method, kind: str, rows: _Rows, forwards: Array, block_values
         for start in range(0, count, step):
             part = rows.part(start, min(start + step, count))
             values = _values(method, kind, part, contracts, formula, work[:, : len(part.weight)])
-            values *= part.weight
             _add_rows(values, out)
 
 
