@@ -38,7 +38,7 @@ Piece = tuple[int | slice, ...]
 BLOCK_ROWS = 8192
 VALUE_BLOCK_ROWS = 32768
 SENSITIVITY_BLOCK_ROWS = 16384
-TASK_ROWS = 65536
+TASK_ROWS = 131072
 
 
 class OutsideError(Exception):

@@ -101,6 +101,18 @@ def _double(block: Sequence[Array], out: Array, work: Array) -> None:
     np.add(block[0], work[0], out=out[0])
 
 
+@pytest.mark.parametrize("kind", ["call", "put"])
+@pytest.mark.parametrize("key", KEYS)
+def test_one_number_for_all_rows_gives_the_digits_of_a_full_column(key: str, kind: str) -> None:
+    method, columns = methods.method(key), book(500)
+    for kept in ("forward_long", "strike", "vol_long", "vol_short", "correlation", "expiry", "discount"):
+        few = {name: column if name == kept else column[7] for name, column in columns.items()}
+        full = {name: np.full(500, column) if np.ndim(column) == 0 else column for name, column in few.items()}
+        short, long = method.sensitivities(**few, kind=kind), method.sensitivities(**full, kind=kind)
+        assert np.array_equal(np.array(short), np.array(long)), kept
+        assert np.array_equal(method.value(**few, kind=kind), method.value(**full, kind=kind)), kept
+
+
 class Failing(Executor):
     """Fails at the first task and never comes to the others."""
 

@@ -156,6 +156,7 @@ def test_the_arguments_are_left_as_they_were() -> None:
         ({"long_contract": [0, 1, 5]}, "long_contract: must be places among 5 contracts, found 5"),
         ({"short_contract": [0, -1, 2]}, "short_contract: must be places among 5 contracts, found -1"),
         ({"long_contract": [0.0, 1.0, 2.0]}, "long_contract: expected whole numbers, found float64"),
+        ({"long_contract": [[0], [1, 2]]}, "long_contract: expected whole numbers"),
         ({"short_contract": [True, False, True]}, "short_contract: expected whole numbers, found bool"),
         ({"strike": [1.0, 2.0]}, "strike: 2 numbers beside 3 positions"),
         ({"vol_long": [[0.1, 0.2, 0.3]]}, r"vol_long: expected one number for each position, found shape \(1, 3\)"),
