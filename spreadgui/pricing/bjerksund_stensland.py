@@ -23,81 +23,121 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import ArrayLike
 
+from spreadgui.pricing.blocks import Kernel
 from spreadgui.pricing.front import differentiate, price
 from spreadgui.pricing.inputs import Array
 from spreadgui.pricing.kirk import check_published_strike
-from spreadgui.pricing.legs import LEG_ROWS, PEAK, Legs, combined, hand_back, orient, signed_tail
-from spreadgui.pricing.ratio_option import floor_at_intrinsic, settle
+from spreadgui.pricing.legs import (
+    LEG_ROWS,
+    PEAK,
+    STILL,
+    Legs,
+    all_calls,
+    hand_back,
+    name_legs,
+    orient,
+    room,
+    signed_tail,
+    still_rows,
+)
+from spreadgui.pricing.ratio_option import floor_at_intrinsic
 from spreadgui.pricing.results import Sensitivities
 
-VALUE_SCRATCH = LEG_ROWS + 7
-SCRATCH = LEG_ROWS + 16
+VALUE_SCRATCH = LEG_ROWS + 9
+SCRATCH = LEG_ROWS + 22
 
 
-class _Points(NamedTuple):
-    """The lump, its short share, the deviation v, the two legs' projections on the direction of exercise and d1, d2,
-    d3."""
+class _Rule(NamedTuple):
+    """The lump and its short share, the deviation v and its inverse, and the two legs' projections on the direction of
+    exercise, with p = q b: ahead (a - rho p)/v and behind (rho a - p)/v."""
 
     lump: Array
     share: Array
     total: Array
+    inverse: Array
     ahead: Array
     behind: Array
-    d1: Array
-    d2: Array
-    d3: Array
 
 
-class _Weights(NamedTuple):
-    """w1, w2, w3, their sum, and the sum of w_i d_i."""
+class _Terms(NamedTuple):
+    """The three terms, each (3, rows): d_i, the discounted amounts F1, F2, K times phi(d_i), the discounted phi(d_i),
+    c_i = d d_i/dp, and space for products."""
 
-    w1: Array
-    w2: Array
-    w3: Array
-    sum_w: Array
-    sum_wd: Array
+    points: Array
+    weights: Array
+    densities: Array
+    turns: Array
+    products: Array
 
 
-def _points(legs: Legs, work: Array) -> _Points:
-    """With p = q b: ahead (a - rho p)/v and behind (rho a - p)/v, so that d3 = d1 - a ahead and d2 = d3 + b behind."""
-    lump, share, total, ahead, behind, d1, d2 = work
-    d3 = share  # the share is spent once d2 is known; kept apart by the caller where it is wanted
+class _Sums(NamedTuple):
+    """Sums over the terms, whose weights w_i count as w1, -w2, -w3: `paid` is w2 + w3, `pull` w1 - (sum of w_i d_i)/v,
+    `own` w1 c1; the others are derivatives of the formula in l and p, with the amounts held."""
+
+    paid: Array
+    pull: Array
+    own: Array
+    by_l: Array
+    by_p: Array
+    by_l_p: Array
+    by_p_p: Array
+
+
+def _follow(legs: Legs, points: Array, work: Array) -> _Rule:
+    """The rule, and into `points` its d1, d2, d3: d3 = d1 - a ahead and d2 = d3 + b behind."""
+    rule = _Rule(*work)
+    lump, share, total, inverse, ahead, behind = rule
+    d1, d2, d3 = points
     a, b = legs.deviation_first, legs.deviation_second
     np.add(legs.second, legs.strike, out=lump)
     np.divide(legs.second, lump, out=share)
     p = np.multiply(share, b, out=d1)
-    combined(a, p, legs.correlation, total, d2)
-    np.subtract(1.0, legs.correlation, out=d2)
-    np.subtract(a, p, out=ahead)
-    np.multiply(d2, a, out=behind)
-    np.subtract(ahead, behind, out=behind)
-    d2 *= p
-    ahead += d2
-    ahead /= total
-    behind /= total
+    # v^2 is summed as in `legs.combined`; the parts of the sum serve both projections.
+    short = np.subtract(1.0, legs.correlation, out=room(d2, legs.correlation))
+    gap = np.subtract(a, p, out=ahead)
+    short_first = np.multiply(short, a, out=room(behind, short, a))
+    short_second = np.multiply(short, p, out=d2)
+    np.multiply(short_second, a, out=d3)
+    d3 += d3
+    np.multiply(gap, gap, out=total)
+    total += d3
+    np.sqrt(total, out=total)
+    np.maximum(total, STILL, out=total)
+    np.divide(1.0, total, out=inverse)
+    np.subtract(gap, short_first, out=behind)
+    ahead += short_second
+    ahead *= inverse
+    behind *= inverse
     np.divide(legs.first, lump, out=d1)
     np.log(d1, out=d1)
-    d1 /= total
+    d1 *= inverse
     np.multiply(total, 0.5, out=d2)
     d1 += d2
-    return _Points(lump, share, total, ahead, behind, d1, d2, d3)
+    np.multiply(a, ahead, out=d3)
+    np.subtract(d1, d3, out=d3)
+    np.multiply(b, behind, out=d2)
+    d2 += d3
+    return rule
+
+
+def _worth(legs: Legs, lump: Array, tails: Array, out: Array, spare: Array) -> None:
+    """Undiscounted value into `out` from the three tails N(sign d_i)."""
+    np.multiply(tails[0], legs.first, out=out)
+    np.multiply(tails[1], legs.second, out=spare)
+    out -= spare
+    np.multiply(tails[2], legs.strike, out=spare)
+    out -= spare
+    if not all_calls(legs.sign):
+        out *= legs.sign
+    floor_at_intrinsic(legs.first, lump, legs.sign, out, spare)
 
 
 def _value(kind: str, role_exchange: bool, block: Sequence[Array], out: Array, work: Array) -> None:
-    legs = orient(block, kind, work, role_exchange)
-    lump, _, _, ahead, behind, d1, d2, d3 = _points(legs, work[LEG_ROWS:])
-    ahead *= legs.deviation_first
-    behind *= legs.deviation_second
-    np.subtract(d1, ahead, out=d3)
-    np.add(d3, behind, out=d2)
-    for point, amount in ((d1, legs.first), (d2, legs.second), (d3, legs.strike)):
-        signed_tail(legs.sign, point, point)
-        point *= amount
-    d1 -= d2
-    np.subtract(d1, d3, out=out[0])
-    if legs.sign.size > 1 or legs.sign[0] != 1.0:
-        out[0] *= legs.sign
-    floor_at_intrinsic(legs.first, lump, legs.sign, out[0], d1)
+    legs = orient(block, kind, work, role_exchange, spread=False)
+    points = work[LEG_ROWS : LEG_ROWS + 3]
+    rule = _follow(legs, points, work[LEG_ROWS + 3 :])
+    signed_tail(legs.sign, points, points)
+    _worth(legs, rule.lump, points, out[0], rule.share)
     hand_back(out, legs)
 
 
@@ -105,151 +145,174 @@ def _sensitivities(kind: str, role_exchange: bool, block: Sequence[Array], out: 
     """Derivatives of the formula as it stands.
 
     Its exercise rule is not the best one, so the derivatives of d1, d2, d3 do not cancel between the terms as they do
-    in Margrabe's formula. With w_i the amounts F1, -F2, -K times phi(d_i), a first derivative is the explicit one
-    plus the sum of w_i times the derivative of d_i, and second derivatives follow by phi' = -d phi. Each d_i is m_i/v
-    with m1 = l + v^2/2, m3 = l + (p^2 - a^2)/2, m2 = m3 + rho a b - p b and l = ln(F1/G).
+    in Margrabe's formula. Each d_i is m_i/v with m1 = l + v^2/2, m3 = l + (p^2 - a^2)/2, m2 = m3 + rho a b - p b and
+    l = ln(F1/G). The forwards enter as amounts and through l and p, and since phi' = -d phi it all comes down to sums
+    over the three terms. In p: dv/dp = -behind, d2v/dp2 = (1 - behind^2)/v =: bend, and every m_i has one for its
+    second derivative, so that c1 = behind (d1/v - 1), c3 = (p + behind d3)/v and c2 = c3 - b bend.
     """
-    legs = orient(block, kind, work, role_exchange)
-    _in_forwards_and_volatilities(legs, out, work[LEG_ROWS:])
-    hand_back(out, legs)
+    legs = orient(block, kind, work, role_exchange, spread=False)
+    rows = work[LEG_ROWS:]
+    terms = _Terms(*(rows[start : start + 3] for start in range(0, 15, 3)))
+    rule, spare = _follow(legs, terms.points, rows[15:21]), rows[21]
+    _explicit(legs, rule.lump, terms, out, spare)
+    still = still_rows(rule.total)
+    sure = out[1:3, still]
+    _weigh(legs, terms, spare)
+    p = np.multiply(rule.share, legs.deviation_second, out=terms.densities[0])
+    sums = _sum_up(legs.deviation_second, p, rule, terms, out, spare)
+    _by_volatilities(legs, p, rule, sums, terms, out)
+    _by_forwards(legs, rule, sums, terms, out)
+    if still.size:
+        # The limits of rows without deviation.
+        out[1, still], out[2, still] = sure[0], -sure[1]
+        out[3:, still] = 0.0
+    name_legs(out, legs)
 
 
-def _in_forwards_and_volatilities(legs: Legs, out: Array, work: Array) -> None:
-    f1, f2, k, a, b = legs.first, legs.second, legs.strike, legs.deviation_first, legs.deviation_second
-    share, n1, n2, w1, w2, w3, sum_w, sum_wd, spare = work[7:16]
-    at = _points(legs, work[:7])
-    lump, total, ahead, behind, d1, d2 = at.lump, at.total, at.ahead, at.behind, at.d1, at.d2
-    share[...] = at.share
-    d3 = np.multiply(a, ahead, out=at.d3)
-    np.subtract(d1, d3, out=d3)
-    np.multiply(b, behind, out=d2)
-    d2 += d3
-    out[0] = 0.0
-    for point, amount, weight, tail in ((d1, f1, w1, n1), (d2, -f2, w2, n2), (d3, -k, w3, sum_w)):
-        signed_tail(legs.sign, point, tail)
-        tail *= legs.sign
-        np.multiply(tail, amount, out=spare)
-        out[0] += spare
-        np.multiply(point, point, out=weight)
-        weight *= -0.5
-        np.exp(weight, out=weight)
-        weight *= PEAK
-        weight *= amount
-    floor_at_intrinsic(f1, lump, legs.sign, out[0], spare)
-    np.add(w1, w2, out=sum_w)
-    sum_w += w3
-    np.multiply(w1, d1, out=sum_wd)
-    for weight, point in ((w2, d2), (w3, d3)):
-        np.multiply(weight, point, out=spare)
-        sum_wd += spare
-    weights = _Weights(w1, w2, w3, sum_w, sum_wd)
-    inverse = np.divide(1.0, total, out=spare)
-    _by_volatilities(legs, at._replace(share=share, d3=d3), weights, inverse, out)
-    _by_forwards(legs, at._replace(share=share, d3=d3), weights, inverse, out)
-    out[1] += n1
-    out[2] -= n2
-    settle(total, n1, n2, out)
+def _explicit(legs: Legs, lump: Array, terms: _Terms, out: Array, spare: Array) -> None:
+    """The discounted value, and what the forwards as amounts multiply."""
+    tails = signed_tail(legs.sign, terms.points, terms.products)
+    _worth(legs, lump, tails, out[0], spare)
+    out[0] *= legs.discount
+    np.multiply(tails[:2], legs.discount, out=out[1:3])
+    if not all_calls(legs.sign):
+        out[1:3] *= legs.sign
 
 
-def _by_volatilities(legs: Legs, at: _Points, weights: _Weights, inverse: Array, out: Array) -> None:
-    a, b, rho = legs.deviation_first, legs.deviation_second, legs.correlation
-    w1, w2, w3, _, sum_wd = weights
-    both = w2 + w3
-    by_first = out[6]
-    np.multiply(w1, at.total, out=by_first)
-    by_first -= sum_wd
-    by_first *= at.ahead
-    by_first -= both * a
-    w2_rho = w2 * rho
-    by_first += w2_rho * b
-    by_first *= inverse
-    by_second = out[7]
-    np.multiply(w1, at.total, out=by_second)
-    by_second -= sum_wd
-    by_second *= at.behind
-    p = at.share * b
-    both *= p
-    by_second -= both
-    both = w2 * p
-    both *= 2.0
-    by_second *= -at.share
-    w2_rho *= a
-    w2_rho -= both
-    by_second += w2_rho
-    by_second *= inverse
-    pull = sum_wd * inverse
-    pull -= w1
-    pull *= p
-    w2_rho = w2 * b
-    pull += w2_rho
-    pull *= a
-    np.multiply(pull, inverse, out=out[8])
-    np.multiply(by_first, legs.vol_first, out=out[9])
-    out[9] += by_second * legs.vol_second
-    out[9] /= legs.root_time
-    out[9] *= -0.5
-    by_first *= legs.root_time
-    by_second *= legs.root_time
+def _weigh(legs: Legs, terms: _Terms, spare: Array) -> None:
+    scale = np.multiply(legs.discount, PEAK, out=spare)
+    densities = np.multiply(terms.points, terms.points, out=terms.densities)
+    densities *= -0.5
+    np.exp(densities, out=densities)
+    densities *= scale
+    for density, amount, weight in zip(densities, (legs.first, legs.second, legs.strike), terms.weights, strict=True):
+        np.multiply(density, amount, out=weight)
 
 
-def _by_forwards(legs: Legs, at: _Points, weights: _Weights, inverse: Array, out: Array) -> None:
-    """Deltas but for their explicit part, and gammas. g_i and h_i are the first and second derivatives of d_i in F2."""
-    f1, f2, b = legs.first, legs.second, legs.deviation_second
-    w1, w2, w3, sum_w, sum_wd = weights
-    by_first = inverse / f1
-    np.multiply(sum_w, by_first, out=out[1])
-    np.multiply(sum_wd, by_first, out=out[3])
-    np.subtract((2.0 * w1 - sum_w) / f1, out[3], out=out[3])
-    out[3] *= by_first
-    per_lump = 1.0 / at.lump
-    slope = legs.strike * per_lump
+def _less(products: Array, out: Array) -> Array:
+    """The first product less the two others."""
+    np.subtract(products[0], products[1], out=out)
+    out -= products[2]
+    return out
+
+
+def _sum_up(b: Array, p: Array, rule: _Rule, terms: _Terms, out: Array, turned: Array) -> _Sums:
+    """The sums, in rows that are spent: of the points, of the densities but for the middle one, of the results."""
+    inverse, behind = rule.inverse, rule.behind
+    points, weights, _, turns, products = terms
+    paid = np.add(weights[1], weights[2], out=terms.densities[2])
+    np.multiply(weights, points, out=products)
+    _less(products, turned)
+    pull = np.multiply(turned, inverse, out=out[3])
+    np.subtract(weights[0], pull, out=pull)
+    bend = np.multiply(behind, behind, out=out[4])
+    np.subtract(1.0, bend, out=bend)
+    bend *= inverse
+    np.multiply(points[0], inverse, out=turns[0])
+    turns[0] -= 1.0
+    turns[0] *= behind
+    np.multiply(points[2], behind, out=turns[2])
+    turns[2] += p
+    turns[2] *= inverse
+    np.multiply(b, bend, out=turns[1])
+    np.subtract(turns[2], turns[1], out=turns[1])
+    np.multiply(weights, turns, out=points)
+    by_p = _less(points, points[1])
+    products *= turns
+    by_l_p = _less(products, points[2])
+    products *= turns
+    by_p_p = _less(products, products[0])
+    by_l = np.subtract(weights[0], paid, out=weights[2])
+    by_l *= inverse
+    spare = np.multiply(by_l, behind, out=products[1])
+    np.subtract(spare, by_l_p, out=by_l_p)
+    by_l_p *= inverse
+    np.multiply(behind, by_p, out=spare)
+    turned *= bend
+    turned -= spare
+    turned -= spare
+    turned *= inverse
+    np.subtract(by_l, by_p_p, out=by_p_p)
+    by_p_p -= turned
+    return _Sums(paid, pull, points[0], by_l, by_p, by_l_p, by_p_p)
+
+
+def _by_volatilities(legs: Legs, p: Array, rule: _Rule, sums: _Sums, terms: _Terms, out: Array) -> None:
+    """Vegas, correlation sensitivity and theta; `p` is spent."""
+    a, inverse, second = legs.deviation_first, rule.inverse, terms.weights[1]
+    _, moved, spare = terms.products
+    by_first, by_second, by_correlation, by_time = out[6:]
+    np.multiply(second, legs.deviation_second, out=moved)
+    np.multiply(moved, legs.correlation, out=by_time)
+    np.multiply(sums.paid, a, out=spare)
+    spare -= by_time
+    spare *= inverse
+    np.multiply(sums.pull, rule.ahead, out=by_first)
+    by_first += spare
+    np.multiply(second, rule.behind, out=spare)
+    np.multiply(rule.share, sums.by_p, out=by_second)
+    by_second -= spare
+    np.multiply(by_first, legs.vol_first, out=by_time)
+    np.multiply(by_second, legs.vol_second, out=spare)
+    by_time += spare
+    by_time /= legs.root_time
+    by_time *= -0.5
+    out[6:8] *= legs.root_time
+    p *= sums.pull
+    p += moved
+    p *= a
+    p *= inverse
+    np.negative(p, out=by_correlation)
+
+
+def _by_forwards(legs: Legs, rule: _Rule, sums: _Sums, terms: _Terms, out: Array) -> None:
+    """Deltas and gammas; the lump and the sums are spent."""
+    inverse, density, turn = rule.inverse, terms.densities[1], terms.turns[1]
+    paid, pull, own, by_l, by_p, by_l_p, by_p_p = sums
+    _, spare, other = terms.products
+    per_lump = np.divide(1.0, rule.lump, out=rule.lump)
+    per_first = np.divide(1.0, legs.first, out=terms.turns[0])
+    slope = np.multiply(legs.strike, per_lump, out=terms.turns[2])
     slope *= per_lump
-    v_share = at.behind * -b
-    v_second = v_share * slope
-    v_twice = b * b
-    square = v_twice * slope
-    v_twice -= v_share * v_share
-    v_twice *= inverse
-    v_twice *= slope
-    v_twice -= 2.0 * v_share * per_lump
-    v_twice *= slope
-    level = per_lump * per_lump
-    level += square * slope
-    bend = -2.0 * slope * per_lump
-    p = at.share * b
-    leaps = (at.total * v_share, b * (p - b), b * p)
-    np.multiply(sum_w, v_second, out=out[5])
-    out[5] *= inverse
-    out[5] -= w2 / f2
-    np.negative(out[5], out=out[5])
-    out[4] = 0.0
-    out[2] = 0.0
-    for weight, point, leap in zip((w1, w2, w3), (at.d1, at.d2, at.d3), leaps, strict=True):
-        g = slope * leap
-        g -= per_lump
-        g -= point * v_second
-        g *= inverse
-        h = bend * leap
-        h += level
-        h -= (2.0 * g) * v_second
-        h -= point * v_twice
-        h *= inverse
-        if weight is w1:
-            first_gain = g * w1
-            first_gain /= f1
-        elif weight is w2:
-            out[4] += (2.0 / f2) * (w2 * g)
-        g_weight = g * weight
-        out[2] += g_weight
-        g *= point
-        g *= g_weight
-        h *= weight
-        h -= g
-        out[4] += h
-        g_weight *= point
-        out[5] -= g_weight
-    out[5] *= by_first
-    out[5] += first_gain
+    slope *= legs.deviation_second
+    np.multiply(by_l, per_first, out=spare)
+    out[1] += spare
+    np.multiply(slope, by_p, out=spare)
+    by_l *= per_lump
+    spare -= by_l
+    np.subtract(spare, out[2], out=out[2])
+    own += by_l_p
+    own *= slope
+    np.multiply(pull, per_lump, out=spare)
+    spare += density
+    spare *= inverse
+    np.subtract(own, spare, out=out[5])
+    out[5] *= per_first
+    by_p += by_l_p
+    by_p *= slope
+    by_p *= per_lump
+    per_lump_deviation = np.multiply(per_lump, inverse, out=spare)
+    np.multiply(turn, slope, out=other)
+    other -= per_lump_deviation
+    other *= density
+    by_p += other
+    by_p += by_p
+    by_p_p *= slope
+    by_p_p *= slope
+    by_p_p -= by_p
+    np.subtract(pull, paid, out=out[4])
+    out[4] *= per_lump_deviation
+    out[4] *= per_lump
+    out[4] += by_p_p
+    np.add(pull, paid, out=out[3])
+    out[3] *= inverse
+    out[3] *= per_first
+    out[3] *= per_first
+
+
+def value_kernel(kind: str) -> tuple[Kernel, int]:
+    """What `value` runs over a block, and the scratch rows it wants; columns of any shapes that broadcast."""
+    return partial(_value, kind, True), VALUE_SCRATCH
 
 
 def value(

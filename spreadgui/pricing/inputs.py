@@ -6,7 +6,7 @@ costs one comparison. A refusal is a `ValueError` whose message begins with the 
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Collection, Mapping, Sequence
 from typing import NamedTuple
 
 import numpy as np
@@ -141,6 +141,51 @@ def common_shape(columns: Mapping[str, Array]) -> tuple[int, ...]:
     return shape
 
 
+# What each argument of a spread option must be, and the bounds that say the same of a block without saying where.
+SPREAD_CHECKS: tuple[Callable[[str, Array], None], ...] = (
+    check_positive,
+    check_positive,
+    check_strike,
+    check_not_negative,
+    check_not_negative,
+    check_correlation,
+    check_not_negative,
+    check_not_negative,
+)
+SPREAD_BOUNDS = (
+    (SMALLEST_FORWARD, LARGEST_AMOUNT),
+    (SMALLEST_FORWARD, LARGEST_AMOUNT),
+    (-LARGEST_AMOUNT, LARGEST_AMOUNT),
+    (0.0, LARGEST_RATE),
+    (0.0, LARGEST_RATE),
+    (-1.0, 1.0),
+    (0.0, LARGEST_RATE),
+    (0.0, LARGEST_RATE),
+)
+
+
+def spread_floats(given: Sequence[ArrayLike]) -> SpreadColumns:
+    """The eight arguments of a spread option as float64 arrays, their numbers not yet checked."""
+    return SpreadColumns(*(as_floats(name, one) for name, one in zip(SpreadColumns._fields, given, strict=True)))
+
+
+def check_spread(columns: SpreadColumns, left_out: Collection[int] = ()) -> None:
+    """Refuse bad numbers in every column but those whose places are left out."""
+    for place, (check, name) in enumerate(zip(SPREAD_CHECKS, SpreadColumns._fields, strict=True)):
+        if place not in left_out:
+            check(name, columns[place])
+
+
+def within_bounds(places: Sequence[int], block: Sequence[Array]) -> bool:
+    """Whether the block's columns at these places, none of them empty, would pass `check_spread`; a NaN does not."""
+    for place in places:
+        low, high = SPREAD_BOUNDS[place]
+        column = block[place]
+        if not (np.minimum.reduce(column) >= low and np.maximum.reduce(column) <= high):
+            return False
+    return True
+
+
 def spread_columns(
     forward_long: ArrayLike,
     forward_short: ArrayLike,
@@ -152,16 +197,8 @@ def spread_columns(
     discount: ArrayLike,
 ) -> tuple[SpreadColumns, tuple[int, ...]]:
     """The checked columns of a spread option under lognormal legs, and their common shape."""
-    given = (forward_long, forward_short, strike, vol_long, vol_short, correlation, expiry, discount)
-    columns = SpreadColumns(*(as_floats(name, one) for name, one in zip(SpreadColumns._fields, given, strict=True)))
-    check_positive("forward_long", columns.forward_long)
-    check_positive("forward_short", columns.forward_short)
-    check_strike("strike", columns.strike)
-    check_not_negative("vol_long", columns.vol_long)
-    check_not_negative("vol_short", columns.vol_short)
-    check_correlation("correlation", columns.correlation)
-    check_not_negative("expiry", columns.expiry)
-    check_not_negative("discount", columns.discount)
+    columns = spread_floats((forward_long, forward_short, strike, vol_long, vol_short, correlation, expiry, discount))
+    check_spread(columns)
     return columns, common_shape(columns._asdict())
 
 

@@ -18,12 +18,14 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from spreadgui.pricing import ratio_option
+from spreadgui.pricing.blocks import Kernel
 from spreadgui.pricing.front import differentiate, price
 from spreadgui.pricing.inputs import Array, SpreadColumns
-from spreadgui.pricing.legs import LEG_ROWS, Legs, combined, hand_back, orient
+from spreadgui.pricing.legs import LEG_ROWS, Legs, combined, hand_back, orient, turn
 from spreadgui.pricing.results import Sensitivities
 
-SCRATCH = LEG_ROWS + 4
+VALUE_SCRATCH = 3
+SCRATCH = LEG_ROWS
 
 
 def check_published_strike(columns: SpreadColumns) -> None:
@@ -34,13 +36,6 @@ def check_published_strike(columns: SpreadColumns) -> None:
             raise ValueError(
                 "strike: the published form needs forward_short + strike above zero; use role_exchange=True"
             )
-
-
-def _diluted(legs: Legs, lump: Array, out: Array) -> Array:
-    """The short leg's deviation diluted by its share of the lump, into `out`."""
-    np.divide(legs.second, lump, out=out)
-    out *= legs.deviation_second
-    return out
 
 
 def deviation(legs: Legs, lump: Array) -> ratio_option.Deviation:
@@ -74,11 +69,13 @@ def deviation(legs: Legs, lump: Array) -> ratio_option.Deviation:
 
 
 def _value(kind: str, role_exchange: bool, block: Sequence[Array], out: Array, work: Array) -> None:
-    legs = orient(block, kind, work, role_exchange)
-    lump, total, diluted, spare = work[LEG_ROWS:]
+    legs = turn(block, kind, role_exchange)
+    lump, total, spare = work
     np.add(legs.second, legs.strike, out=lump)
-    combined(legs.deviation_first, _diluted(legs, lump, diluted), legs.correlation, total, spare)
-    ratio_option.value(legs.first, lump, total, legs.sign, out[0], work[-2:])
+    diluted = np.divide(legs.second, lump, out=out[0])
+    diluted *= legs.vol_second
+    combined(legs.vol_first, diluted, legs.correlation, total, spare, legs.expiry)
+    ratio_option.value(legs.first, lump, total, legs.sign, out[0], work[2:])
     hand_back(out, legs)
 
 
@@ -87,6 +84,11 @@ def _sensitivities(kind: str, role_exchange: bool, block: Sequence[Array], out: 
     lump = np.add(legs.second, legs.strike, out=np.empty_like(legs.root_time))
     ratio_option.sensitivities(legs, lump, deviation(legs, lump), out)
     hand_back(out, legs)
+
+
+def value_kernel(kind: str) -> tuple[Kernel, int]:
+    """What `value` runs over a block, and the scratch rows it wants; columns of any shapes that broadcast."""
+    return partial(_value, kind, True), VALUE_SCRATCH
 
 
 def value(
@@ -123,7 +125,7 @@ def value(
     """
     given = (forward_long, forward_short, strike, vol_long, vol_short, correlation, expiry, discount)
     check = None if role_exchange else check_published_strike
-    return price(partial(_value, kind, role_exchange), given, kind, executor, check=check, scratch=SCRATCH)
+    return price(partial(_value, kind, role_exchange), given, kind, executor, check=check, scratch=VALUE_SCRATCH)
 
 
 def sensitivities(

@@ -27,6 +27,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from spreadgui.pricing import kirk, ratio_option
+from spreadgui.pricing.blocks import Kernel
 from spreadgui.pricing.front import differentiate, price
 from spreadgui.pricing.inputs import Array
 from spreadgui.pricing.kirk import check_published_strike
@@ -85,7 +86,7 @@ def _value(kind: str, role_exchange: bool, block: Sequence[Array], out: Array, w
     _, _, g, mixing, log_ratio = _correction(legs, lump, total)
     total += mixing * g * log_ratio
     np.maximum(total, STILL, out=total)
-    ratio_option.value(legs.first, lump, total, legs.sign, out[0], work[-2:])
+    ratio_option.value(legs.first, lump, total, legs.sign, out[0], work[-1:])
     hand_back(out, legs)
 
 
@@ -94,6 +95,11 @@ def _sensitivities(kind: str, role_exchange: bool, block: Sequence[Array], out: 
     lump = np.add(legs.second, legs.strike, out=np.empty_like(legs.root_time))
     ratio_option.sensitivities(legs, lump, deviation(legs, lump), out)
     hand_back(out, legs)
+
+
+def value_kernel(kind: str) -> tuple[Kernel, int]:
+    """What `value` runs over a block, and the scratch rows it wants; columns of any shapes that broadcast."""
+    return partial(_value, kind, True), SCRATCH
 
 
 def value(

@@ -15,9 +15,7 @@ from typing import NamedTuple
 import numpy as np
 
 from spreadgui.pricing.inputs import Array
-from spreadgui.pricing.legs import PEAK, Legs, signed_tail, still_rows
-
-VALUE_ROWS = 2
+from spreadgui.pricing.legs import PEAK, Legs, all_calls, signed_tail, still_rows
 
 
 class Deviation(NamedTuple):
@@ -40,8 +38,9 @@ class Deviation(NamedTuple):
 
 
 def value(first: Array, lump: Array, total: Array, sign: Array, out: Array, work: Array) -> None:
-    """Undiscounted value into `out`; a deviation at its floor gives the intrinsic value."""
-    upper, lower = work
+    """Undiscounted value into `out`, with one row of scratch space; a deviation at its floor gives the intrinsic
+    value."""
+    upper, lower = work[0], out
     np.divide(first, lump, out=upper)
     np.log(upper, out=upper)
     upper /= total
@@ -53,7 +52,7 @@ def value(first: Array, lump: Array, total: Array, sign: Array, out: Array, work
     upper *= first
     lower *= lump
     np.subtract(upper, lower, out=out)
-    if sign.size > 1 or sign[0] != 1.0:
+    if not all_calls(sign):
         out *= sign
     floor_at_intrinsic(first, lump, sign, out, upper)
 
@@ -61,9 +60,10 @@ def value(first: Array, lump: Array, total: Array, sign: Array, out: Array, work
 def floor_at_intrinsic(first: Array, lump: Array, sign: Array, out: Array, spare: Array) -> None:
     """Lift undiscounted values that rounding or the approximation has left below sign (F1 - G) or zero, in place."""
     np.subtract(first, lump, out=spare)
-    spare *= sign
-    np.maximum(spare, 0.0, out=spare)
+    if not all_calls(sign):
+        spare *= sign
     np.maximum(out, spare, out=out)
+    np.maximum(out, 0.0, out=out)
 
 
 def sensitivities(legs: Legs, lump: Array, v: Deviation, out: Array) -> None:
@@ -79,7 +79,7 @@ def sensitivities(legs: Legs, lump: Array, v: Deviation, out: Array) -> None:
     upper += 0.5 * total
     lower = upper - total
     in_first, in_lump = signed_tail(sign, upper, np.empty_like(upper)), signed_tail(sign, lower, np.empty_like(upper))
-    if sign.size > 1 or sign[0] != 1.0:
+    if not all_calls(sign):
         in_first *= sign
         in_lump *= sign
     density = upper * upper
