@@ -6,8 +6,9 @@ undo exact, lets the pricing thread read without locks, and lets the slate find 
 Volatilities and correlations are annualised decimals, the zero rate is continuous (ACT/365F), a delivery is a month
 written "2027-01". The volatilities of a market with normal dynamics are absolute: in its unit, a root of a year.
 
-Version 2 of the file added what has a default here: dynamics, shift and calendar of a market, the daily volatility of
-a mark, exercise and quoted premium of a position, the gap tolerance of a book. A file of version 1 reads as it stands.
+Version 2 of the file added, each with a default: dynamics, shift, lot and calendar of a market, daily volatility and
+note of a mark, standard error and note of a correlation, exercise and quoted premium of a position, and gap tolerance,
+zero curve, blends and settles of a book. A file of version 1 reads as it stands.
 """
 
 from __future__ import annotations
@@ -24,6 +25,7 @@ Side = Literal["long", "short"]
 Kind = Literal["call", "put", "forward"]
 Exercise = Literal["once", "business days", "all days"]
 Dynamics = Literal["lognormal", "shifted lognormal", "normal"]
+LotRule = Literal["fixed", "per hour", "per day"]
 ValuationMethod = Literal["kirk", "modified_kirk", "bjerksund_stensland", "yardstick"]
 
 
@@ -31,13 +33,14 @@ class Mark(Struct, frozen=True, forbid_unknown_fields=True, omit_defaults=True, 
     """The forward (in the market's unit) and the volatility of one delivery.
 
     `volatility` holds to the start of the delivery, `daily_volatility` from there to the day that is exercised; where
-    there is none, the first goes on.
+    there is none, the first goes on. `note` says where the volatility came from.
     """
 
     delivery: str
     forward: float
     volatility: float
     daily_volatility: float | None = None
+    note: str = ""
 
 
 class Market(Struct, frozen=True, forbid_unknown_fields=True, omit_defaults=True):
@@ -46,6 +49,9 @@ class Market(Struct, frozen=True, forbid_unknown_fields=True, omit_defaults=True
     Under shifted lognormal dynamics it is forward + `shift` that is lognormal. `business_days` has a 1 for each day of
     the week from Monday on that is one, `holidays` are those that are none. `tie_strength` is how fast the correlation
     of two of its deliveries decays, per year apart.
+
+    A lot is `lot_size` units, or so many for each hour or each day of the delivery month (24 hours a day), as the
+    `lot_rule` says.
     """
 
     name: str
@@ -55,16 +61,53 @@ class Market(Struct, frozen=True, forbid_unknown_fields=True, omit_defaults=True
     shift: float = 0.0
     business_days: str = "1111100"
     holidays: tuple[datetime.date, ...] = ()
+    lot_size: float = 1.0
+    lot_rule: LotRule = "fixed"
     note: str = ""
     marks: tuple[Mark, ...] = ()
 
 
-class Correlation(Struct, frozen=True, forbid_unknown_fields=True, gc=False):
-    """The correlation of two markets; the order of the two does not matter."""
+class Correlation(Struct, frozen=True, forbid_unknown_fields=True, omit_defaults=True, gc=False):
+    """The correlation of two markets; the order of the two does not matter.
+
+    One that came from an estimate has its `standard_error`, and a `note` of window and date.
+    """
 
     first: str
     second: str
     correlation: float
+    standard_error: float | None = None
+    note: str = ""
+
+
+class Part(Struct, frozen=True, forbid_unknown_fields=True, gc=False):
+    """A market's weight in a blend: units of the market for one unit of the blend."""
+
+    market: str
+    weight: float
+
+
+class Blend(Struct, frozen=True, forbid_unknown_fields=True, omit_defaults=True):
+    """A named, weighted mix of markets that can stand as one leg; its forward is the weighted sum of theirs."""
+
+    name: str
+    unit: str
+    parts: tuple[Part, ...] = ()
+    note: str = ""
+
+
+class ZeroPoint(Struct, frozen=True, forbid_unknown_fields=True, gc=False):
+    """The continuous zero rate (ACT/365F) to one day."""
+
+    date: datetime.date
+    rate: float
+
+
+class Settles(Struct, frozen=True, forbid_unknown_fields=True, gc=False):
+    """Where the settle history stands: a path relative to the book's folder, and the SHA-256 of the file."""
+
+    path: str
+    sha256: str
 
 
 class Position(Struct, frozen=True, forbid_unknown_fields=True, omit_defaults=True, gc=False):
@@ -105,7 +148,8 @@ class Book(Struct, frozen=True, forbid_unknown_fields=True, kw_only=True):
     """A whole book: what is held, and the marks of one day to value it with.
 
     `method` names the formula that values and sensitivities come from under (shifted) lognormal dynamics. A formula
-    is trusted for a position while its gap to the Yardstick is at most `gap_tolerance`, a decimal of the premium.
+    is trusted for a position while its gap to the Yardstick is at most `gap_tolerance`, a decimal of the premium. With
+    points on the `zero_curve` they discount, and the flat `zero_rate` is not used.
     """
 
     format: Literal["spreadgui book"] = FORMAT
@@ -117,6 +161,9 @@ class Book(Struct, frozen=True, forbid_unknown_fields=True, kw_only=True):
     method: ValuationMethod = "yardstick"
     gap_tolerance: float = 0.01
     note: str = ""
+    zero_curve: tuple[ZeroPoint, ...] = ()
+    settles: Settles | None = None
     markets: tuple[Market, ...] = ()
+    blends: tuple[Blend, ...] = ()
     correlations: tuple[Correlation, ...] = ()
     positions: tuple[Position, ...] = ()

@@ -71,11 +71,20 @@ def _value_faults(value: Any, expected: Any, where: str) -> Iterator[Fault]:
         for index, one in enumerate(value):
             yield from _value_faults(one, item, f"{where}[{index}]")
         return
-    if isinstance(expected, type) and issubclass(expected, msgspec.Struct):
-        yield from faults(value, expected, where)
+    record = _record_in(expected)
+    if record is not None and not (value is None and record is not expected):
+        yield from faults(value, record, where)
         return
     if not _fits(value, expected):
         yield Fault(where, f"expected {_words(expected)}, got {_shown(value)}")
+
+
+def _record_in(expected: Any) -> type[msgspec.Struct] | None:
+    """The record that an entry holds, alone or where it may be null; None where it holds a plain value."""
+    for part in (expected, *typing.get_args(expected)):
+        if isinstance(part, type) and issubclass(part, msgspec.Struct):
+            return part
+    return None
 
 
 def _fits(value: Any, expected: Any) -> bool:

@@ -19,6 +19,7 @@ from spreadgui.market.contracts import Readiness, ResolvedPosition, Trouble, res
 from spreadgui.market.many import resolve_many
 from spreadgui.market.quotes import Quotes
 from spreadgui.market.strips import Strip
+from spreadgui.market.touched import all_alike, touches
 
 FloatArray = NDArray[np.float64]
 RowArray = NDArray[np.intp]
@@ -94,7 +95,7 @@ def follow(previous: Slate | None, book: Book, revision: int) -> Succession:
     """The slate of `book`, taking over from `previous` whatever still holds."""
     old_rows = _old_rows(previous, book)
     columns = _Columns.taken_over(previous, old_rows)
-    quotes = previous.quotes if previous is not None and _same_marks(previous.book, book) else Quotes.of(book)
+    quotes = previous.quotes if previous is not None and _same_quotes(previous.book, book) else Quotes.of(book)
     fresh = np.flatnonzero(old_rows == _NOT_KEPT)
     left = columns.put_many(fresh, book, quotes) if len(fresh) >= MANY else fresh
     for row in left.tolist():
@@ -105,10 +106,15 @@ def follow(previous: Slate | None, book: Book, revision: int) -> Succession:
 
 
 def _old_rows(previous: Slate | None, book: Book) -> RowArray:
-    """For each position the row of `previous` that holds the same record under the same marks, or −1."""
-    if previous is None or not _same_marks(previous.book, book):
+    """For each position the row of `previous` that holds the same record, if no mark of it is another; or −1."""
+    if previous is None or not all_alike(previous.book, book):
         return np.full(len(book.positions), _NOT_KEPT, dtype=np.intp)
-    return _rows_of_same_records(previous.book.positions, book.positions)
+    rows = _rows_of_same_records(previous.book.positions, book.positions)
+    if not _same_quotes(previous.book, book):
+        touched = touches(previous.book, book)
+        moved = np.fromiter(map(touched, book.positions), dtype=np.bool_, count=len(book.positions))
+        rows[moved] = _NOT_KEPT
+    return rows
 
 
 def _rows_of_same_records(old: Sequence[Position], new: Sequence[Position]) -> RowArray:
@@ -131,15 +137,9 @@ def _found(row_of: Mapping[int, int], new: Sequence[Position], same: NDArray[np.
     return rows
 
 
-def _same_marks(old: Book, new: Book) -> bool:
-    """Whether everything but the positions is the same, as far as a slate reads it."""
-    return (
-        old.markets is new.markets
-        and old.correlations is new.correlations
-        and old.valuation_date == new.valuation_date
-        and old.zero_rate == new.zero_rate
-        and old.method == new.method
-    )
+def _same_quotes(old: Book, new: Book) -> bool:
+    """Whether what is looked up for a position stands in the same records."""
+    return old.markets is new.markets and old.correlations is new.correlations and old.blends is new.blends
 
 
 @dataclass

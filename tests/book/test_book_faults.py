@@ -132,7 +132,7 @@ def test_a_needed_entry_that_is_absent_is_named(path: list[str | int], place: st
         (["a\nb"], "a\N{REPLACEMENT CHARACTER}b"),
         (["markets", 0, "colour"], "markets[0].colour"),
         (["markets", 0, "marks", 0, "bid"], "markets[0].marks[0].bid"),
-        (["correlations", 0, "note"], "correlations[0].note"),
+        (["correlations", 0, "source"], "correlations[0].source"),
         (["positions", 2, "Strike"], "positions[2].Strike"),
     ],
 )

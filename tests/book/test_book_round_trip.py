@@ -14,7 +14,7 @@ from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
 from spreadgui.book.reading import parse_book, read_book
-from spreadgui.book.records import Book, Correlation, Mark, Market, Position
+from spreadgui.book.records import Blend, Book, Correlation, Mark, Market, Part, Position, Settles, ZeroPoint
 from spreadgui.book.writing import book_bytes, write_book
 
 PATIENT = settings(deadline=None, max_examples=60, suppress_health_check=[HealthCheck.too_slow])
@@ -22,7 +22,7 @@ PATIENT = settings(deadline=None, max_examples=60, suppress_health_check=[Health
 words = st.text(max_size=12)
 finite = st.floats(allow_nan=False, allow_infinity=False)
 maybe = finite | st.none()
-marks = st.builds(Mark, delivery=words, forward=finite, volatility=finite, daily_volatility=maybe)
+marks = st.builds(Mark, delivery=words, forward=finite, volatility=finite, daily_volatility=maybe, note=words)
 markets = st.builds(
     Market,
     name=words,
@@ -32,9 +32,14 @@ markets = st.builds(
     shift=finite,
     business_days=words,
     holidays=st.lists(st.dates(), max_size=3).map(tuple),
+    lot_size=finite,
+    lot_rule=st.sampled_from(["fixed", "per hour", "per day"]),
     note=words,
     marks=st.lists(marks, max_size=3).map(tuple),
 )
+parts = st.builds(Part, market=words, weight=finite)
+blends = st.builds(Blend, name=words, unit=words, parts=st.lists(parts, max_size=3).map(tuple), note=words)
+correlations = st.builds(Correlation, first=words, second=words, correlation=finite, standard_error=maybe, note=words)
 positions = st.builds(
     Position,
     name=words,
@@ -68,7 +73,10 @@ books = st.builds(
     gap_tolerance=finite,
     note=words,
     markets=st.lists(markets, max_size=3).map(tuple),
-    correlations=st.lists(st.builds(Correlation, first=words, second=words, correlation=finite), max_size=3).map(tuple),
+    zero_curve=st.lists(st.builds(ZeroPoint, date=st.dates(), rate=finite), max_size=3).map(tuple),
+    settles=st.none() | st.builds(Settles, path=words, sha256=words),
+    blends=st.lists(blends, max_size=2).map(tuple),
+    correlations=st.lists(correlations, max_size=3).map(tuple),
     positions=st.lists(positions, max_size=4).map(tuple),
 )
 
@@ -116,16 +124,23 @@ def test_the_file_is_json_that_any_reader_takes_with_one_record_a_line(book: Boo
     assert raw["positions"] == json.loads(msgspec.json.encode(book.positions))
     assert written.endswith(b"}\n")
     lines = written.count(b"\n")
-    assert lines == 1 + 12 + 1 + 3 + len(book.positions) + len(book.correlations) + sum(map(market_lines, book.markets))
+    flat = len(book.positions) + len(book.correlations) + len(book.zero_curve)
+    opened = sum(map(market_lines, book.markets)) + sum(map(blend_lines, book.blends))
+    assert lines == 1 + 15 + 1 + 5 + flat + opened
 
 
 def market_lines(market: Market) -> int:
     """A market without marks takes one line; one with marks is opened up."""
     if not market.marks:
         return 1
-    fields = ("tie_strength", "dynamics", "shift", "business_days", "holidays", "note")
+    fields = ("tie_strength", "dynamics", "shift", "business_days", "holidays", "lot_size", "lot_rule", "note")
     written = sum(getattr(market, field) != getattr(Market("", ""), field) for field in fields)
     return 2 + 2 + written + 2 + len(market.marks)
+
+
+def blend_lines(blend: Blend) -> int:
+    """A blend, like a market, is opened up once it has parts."""
+    return 2 + 2 + (blend.note != "") + 2 + len(blend.parts) if blend.parts else 1
 
 
 def test_save_open_save_leaves_the_file_as_it_was(tmp_path: Path) -> None:

@@ -69,7 +69,9 @@ def test_the_committed_schema_is_the_one_the_records_give() -> None:
 
 def test_the_schema_explains_every_record_and_every_entry() -> None:
     records = book_schema()["$defs"]
-    assert set(records) == {"Book", "Market", "Mark", "Correlation", "Position"}
+    assert set(records) == {
+        "Book", "Market", "Mark", "Blend", "Part", "ZeroPoint", "Settles", "Correlation", "Position",
+    }  # fmt: skip
     for record in records.values():
         assert record["description"]
         assert all(entry["description"].endswith(".") for entry in record["properties"].values())
@@ -83,8 +85,12 @@ def test_a_sample_uses_only_the_entries_of_the_schema_and_all_it_requires(name: 
 
 def test_what_the_schema_requires_the_reader_requires() -> None:
     raw = json.loads(sample_book("one_spark").read_bytes())
+    raw["blends"] = [{"name": "Mix", "unit": "CRN/MWh", "parts": [{"market": SOUTH, "weight": 1.0}]}]
+    raw["zero_curve"], raw["settles"] = [{"date": "2027-12-01", "rate": 0.03}], {"path": "a.csv", "sha256": "0" * 64}
     places = {"Book": raw, "Market": raw["markets"][0], "Mark": raw["markets"][0]["marks"][0]}
     places |= {"Correlation": raw["correlations"][0], "Position": raw["positions"][0]}
+    places |= {"Blend": raw["blends"][0], "Part": raw["blends"][0]["parts"][0]}
+    places |= {"ZeroPoint": raw["zero_curve"][0], "Settles": raw["settles"]}
     for name, record in book_schema()["$defs"].items():
         for key in record["required"]:
             kept = places[name].pop(key)
@@ -95,6 +101,8 @@ def test_what_the_schema_requires_the_reader_requires() -> None:
 
 
 def _hold_against(value: Any, schema: dict[str, Any], records: dict[str, Any]) -> None:
+    for choice in schema.get("anyOf", ()) if isinstance(value, dict) else ():
+        schema = choice if "$ref" in choice else schema
     if "$ref" in schema:
         schema = records[schema["$ref"].rpartition("/")[2]]
     if isinstance(value, list):
@@ -108,8 +116,11 @@ def _hold_against(value: Any, schema: dict[str, Any], records: dict[str, Any]) -
     elif "enum" in schema:
         assert value in schema["enum"]
     else:
-        allowed = {one["type"] for one in schema.get("anyOf", [schema])}
-        assert allowed & {str: {"string"}, int: {"integer", "number"}, float: {"number"}}[type(value)]
+        allowed = {one.get("type") for one in schema.get("anyOf", [schema])}
+        assert (
+            allowed
+            & {type(None): {"null"}, str: {"string"}, int: {"integer", "number"}, float: {"number"}}[type(value)]
+        )
 
 
 # --- the invented market ---------------------------------------------------------------------------------------------
