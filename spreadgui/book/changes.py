@@ -10,14 +10,13 @@
 
 from __future__ import annotations
 
-import datetime
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any, Protocol
 
 import msgspec
 
-from spreadgui.book.records import Book, Position
+from spreadgui.book.records import Book, Market, Position
 
 
 class Change(Protocol):
@@ -91,11 +90,11 @@ class RowsRemoved:
 
 @dataclass(frozen=True)
 class BookSet:
-    """One entry of the book itself (its title, day, zero rate, method) becomes another."""
+    """One entry of the book itself (its title, day, method, the tuple of its markets) becomes another."""
 
     field: str
-    old: str | float | datetime.date
-    new: str | float | datetime.date
+    old: Any
+    new: Any
     words: str
 
     def apply(self, book: Book) -> Book:
@@ -126,9 +125,15 @@ def remove_rows(book: Book, rows: Sequence[int], words: str) -> RowsRemoved:
     return RowsRemoved(ordered, tuple(book.positions[row] for row in ordered), words)
 
 
-def set_book(book: Book, field: str, new: str | float | datetime.date, words: str) -> BookSet:
+def set_book(book: Book, field: str, new: Any, words: str) -> BookSet:
     """The change of one entry of the book itself."""
     return BookSet(field, getattr(book, field), new, words)
+
+
+def set_market(book: Book, place: int, market: Market, words: str) -> BookSet:
+    """The change that puts `market` in the place of the one that stands there; all others stay the same records."""
+    markets = (*book.markets[:place], market, *book.markets[place + 1 :])
+    return BookSet("markets", book.markets, markets, words)
 
 
 def counted(words: str, rows: int) -> str:

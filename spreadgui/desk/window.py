@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from spreadgui.desk.files import BookFiles
     from spreadgui.desk.grid.pane import PositionsPane
     from spreadgui.desk.landscape.pane import LandscapePane
+    from spreadgui.desk.markets.marks_pane import MarksPane
     from spreadgui.desk.message import MessageStrip
     from spreadgui.desk.panels.reading import ReadingPane
     from spreadgui.desk.status import StatusLine
@@ -50,6 +51,7 @@ class Window(QMainWindow):
         super().__init__()
         self.theme = theme
         self.landscape: LandscapePane | None = None
+        self.marks: MarksPane | None = None
         self.handlers: dict[str, Callable[[], object]] = {}
         self._opening = QLabel("Opening the book…")
         self._opening.setAlignment(Qt.AlignmentFlag.AlignCenter)
@@ -107,9 +109,13 @@ class Window(QMainWindow):
         self._right = QSplitter(Qt.Orientation.Vertical)
         for pane in (self._vacant, self.reading):
             self._right.addWidget(pane)
+        self._left = QSplitter(Qt.Orientation.Vertical)
+        self._left.addWidget(self.positions)
         self._across = QSplitter(Qt.Orientation.Horizontal)
-        for part in (self.positions, self._right):
+        for part in (self._left, self._right):
             self._across.addWidget(part)
+        self._left.setChildrenCollapsible(False)
+        self._left.setHandleWidth(8)
         for splitter, shares in ((self._right, (58, 42)), (self._across, (54, 46))):
             splitter.setChildrenCollapsible(False)
             splitter.setHandleWidth(8)
@@ -146,6 +152,7 @@ class Window(QMainWindow):
             "duplicate_rows": self.positions.duplicate_rows,
             "delete_rows": self.positions.delete_rows,
             "go_positions": self.positions.view.setFocus,
+            "go_marks": self._go_to_marks,
             "go_landscape": self._go_to_landscape,
             "go_reading": self.reading.setFocus,
             "switch_look": self.switch_look,
@@ -179,6 +186,7 @@ class Window(QMainWindow):
         self._right.replaceWidget(0, self.landscape)
         self._vacant.deleteLater()
         self._share_height()
+        self._bring_in_marks()
         self.landscape.asked.connect(self._ask_again)
         self.workbench.drawn.connect(self.landscape.show_surface)
         self.workbench.drawn.connect(self._late.stop)  # the drawing is the last answer about a row
@@ -187,6 +195,17 @@ class Window(QMainWindow):
         self.positions.view.setFocus()
         self.workbench.begin()
         self._ask_again()
+
+    def _bring_in_marks(self) -> None:
+        """Marks under Positions: what moves the one is edited in the other."""
+        from spreadgui.desk.markets.marks_pane import MarksPane
+
+        self.marks = MarksPane(self.workbench, self.theme)
+        self.marks.told.connect(self.status.tell)
+        height = sum(self._left.sizes())
+        self._left.addWidget(self.marks)
+        self._left.setStretchFactor(0, 1)
+        self._left.setSizes([round(0.58 * height), height - round(0.58 * height)])
 
     def _share_height(self) -> None:
         """The Reading as high as its tables need, as far as the Landscape keeps the larger part."""
@@ -215,6 +234,10 @@ class Window(QMainWindow):
     def _go_to_landscape(self) -> None:
         if self.landscape is not None:
             self.landscape.setFocus()
+
+    def _go_to_marks(self) -> None:
+        if self.marks is not None:
+            self.marks.view.setFocus()
 
     @Slot()
     def _on_followed(self) -> None:
@@ -262,7 +285,7 @@ class Window(QMainWindow):
         assert isinstance(app, QApplication)
         apply(app, self.theme)
         renew_icons(self, self.theme)
-        for pane in (self.positions, self.reading, self.landscape):
+        for pane in (self.positions, self.marks, self.reading, self.landscape):
             if pane is not None:
                 pane.set_theme(self.theme)
 

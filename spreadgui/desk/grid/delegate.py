@@ -6,6 +6,9 @@ book changes only when the text is right.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from typing import Protocol
+
 from PySide6.QtCore import (
     QAbstractItemModel,
     QEvent,
@@ -31,8 +34,8 @@ from PySide6.QtWidgets import (
     QWidget,
 )
 
-from spreadgui.desk.grid.cells import Look
-from spreadgui.desk.grid.model import GridModel
+from spreadgui.book.fields import Field
+from spreadgui.desk.grid.cells import Cell, Look
 from spreadgui.desk.look.theme import Theme, set_refused, tabular
 
 Index = QModelIndex | QPersistentModelIndex
@@ -45,6 +48,36 @@ _COMMIT_KEYS = {
 }
 
 
+class EditedColumn(Protocol):
+    """What painting and editing ask of a column."""
+
+    @property
+    def heading(self) -> str: ...
+
+    @property
+    def numeric(self) -> bool: ...
+
+    @property
+    def field(self) -> Field | None: ...
+
+
+class EditedModel(Protocol):
+    """What painting and editing ask of a model: cells with their look, and whether a text may go into one."""
+
+    @property
+    def columns(self) -> Sequence[EditedColumn]: ...
+
+    def cell(self, index: Index) -> Cell: ...
+
+    def choices(self, index: Index) -> tuple[str, ...]: ...
+
+    def typed(self, index: Index) -> str: ...
+
+    def refusal(self, index: Index, text: str) -> str: ...
+
+    def index(self, row: int, column: int) -> QModelIndex: ...
+
+
 class GridDelegate(QStyledItemDelegate):
     """Paints from the model's cell cache and edits with checks at once.
 
@@ -54,7 +87,7 @@ class GridDelegate(QStyledItemDelegate):
     committed = Signal(object, int)
     refused = Signal(object, str)
 
-    def __init__(self, model: GridModel, theme: Theme, view: QTableView) -> None:
+    def __init__(self, model: EditedModel, theme: Theme, view: QTableView) -> None:
         super().__init__(view)
         self._model = model
         self._note = EntryNote(view.viewport())

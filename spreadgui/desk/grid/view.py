@@ -29,7 +29,8 @@ _EDIT_TRIGGERS = (
 class PlainGridView(QTableView):
     """A table view fit for many rows: fixed row height, own handling of changes, headers that do not count cells."""
 
-    def __init__(self, model: GridModel, theme: Theme, parent: QWidget | None = None) -> None:
+    def __init__(self, model: Any, theme: Theme, parent: QWidget | None = None) -> None:
+        """`model` is a table model that is an `EditedModel` as well."""
         super().__init__(parent)
         self.setModel(model)
         self.cells = GridDelegate(model, theme, self)
@@ -47,6 +48,7 @@ class PlainGridView(QTableView):
         self.horizontalHeader().setHighlightSections(False)
         self.verticalHeader().setSectionResizeMode(QHeaderView.ResizeMode.Fixed)
         self.verticalHeader().setDefaultAlignment(Qt.AlignmentFlag.AlignRight | Qt.AlignmentFlag.AlignVCenter)
+        self.cells.committed.connect(self._move_on)
         self.set_theme(theme)
 
     def set_theme(self, theme: Theme) -> None:
@@ -86,6 +88,33 @@ class PlainGridView(QTableView):
         first = max(self.rowAt(0), 0)
         last = self.rowAt(self.viewport().height() - 1)
         return range(first, count if last < 0 else last + 1)
+
+    def keyPressEvent(self, event: QKeyEvent) -> None:
+        """Enter goes on to the next row, as after an entry."""
+        if event.key() in (Qt.Key.Key_Return, Qt.Key.Key_Enter) and self.state() != self.State.EditingState:
+            self.step(0, 1 if not event.modifiers() & Qt.KeyboardModifier.ShiftModifier else -1)
+            return
+        super().keyPressEvent(event)
+
+    @Slot(object, int)
+    def _move_on(self, _index: QPersistentModelIndex, key: int) -> None:
+        self.setFocus()
+        steps = {Qt.Key.Key_Tab: (1, 0), Qt.Key.Key_Backtab: (-1, 0)}
+        self.step(*steps.get(Qt.Key(key), (0, 1)))
+
+    def step(self, columns: int, rows: int) -> None:
+        """Make the cell so far off current, where there is one."""
+        here = self.currentIndex()
+        there = self.model().index(here.row() + rows, here.column() + columns)
+        if there.isValid():
+            self.setCurrentIndex(there)
+
+    def selected_rows(self) -> list[int]:
+        """The rows that hold any selected cell, ascending."""
+        rows: set[int] = set()
+        for block in self.selectionModel().selection().toList():
+            rows.update(range(block.top(), block.bottom() + 1))
+        return sorted(rows)
 
 
 class PinnedView(PlainGridView):
@@ -132,8 +161,8 @@ class GridView(PlainGridView):
         self.pinned.horizontalHeader().sectionResized.connect(self._follow_pinned_width)
         self.verticalScrollBar().valueChanged.connect(self._tell_sight)
         self.selectionModel().currentChanged.connect(self._on_current)
-        for view in (self, self.pinned):
-            view.cells.committed.connect(self._move_on)
+        self.pinned.cells.committed.disconnect()
+        self.pinned.cells.committed.connect(self._move_on)
 
     # --- geometry
 
@@ -199,25 +228,6 @@ class GridView(PlainGridView):
             return QTableView.edit(self.pinned, index, *trigger_and_event)
         return super().edit(index, *trigger_and_event)
 
-    def keyPressEvent(self, event: QKeyEvent) -> None:
-        """Delete empties the current cells; Enter goes on to the next row, as after an entry."""
-        if event.key() in (Qt.Key.Key_Return, Qt.Key.Key_Enter) and self.state() != self.State.EditingState:
-            self._step(0, 1 if not event.modifiers() & Qt.KeyboardModifier.ShiftModifier else -1)
-            return
-        super().keyPressEvent(event)
-
-    @Slot(object, int)
-    def _move_on(self, index: QPersistentModelIndex, key: int) -> None:
-        self.setFocus()
-        steps = {Qt.Key.Key_Tab: (1, 0), Qt.Key.Key_Backtab: (-1, 0)}
-        self._step(*steps.get(Qt.Key(key), (0, 1)))
-
-    def _step(self, columns: int, rows: int) -> None:
-        here = self.currentIndex()
-        there = self.model().index(here.row() + rows, here.column() + columns)
-        if there.isValid():
-            self.setCurrentIndex(there)
-
     def _is_pinned(self, index: Index) -> bool:
         model = self.model()
         return isinstance(model, GridModel) and index.isValid() and model.columns[index.column()].pinned
@@ -227,13 +237,6 @@ class GridView(PlainGridView):
     def current_row(self) -> int:
         """The row of the current cell, −1 where there is none."""
         return self.currentIndex().row()
-
-    def selected_rows(self) -> list[int]:
-        """The rows that hold any selected cell, ascending."""
-        rows: set[int] = set()
-        for block in self.selectionModel().selection().toList():
-            rows.update(range(block.top(), block.bottom() + 1))
-        return sorted(rows)
 
     def go_to(self, row: int, column: int) -> None:
         """Make a cell current and bring it into sight; beyond the last row, the last."""

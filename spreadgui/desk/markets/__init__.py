@@ -1,0 +1,1 @@
+"""Markets: their marks by delivery, and what holds for all of their deliveries."""
