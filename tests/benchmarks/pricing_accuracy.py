@@ -72,6 +72,16 @@ def ordinary_box(draw: np.random.Generator, count: int) -> Options:
     return Options(long, short, strike, long_vol, short_vol, correlation)
 
 
+def corner_box(draw: np.random.Generator, count: int) -> Options:
+    """The hard box with correlations between 1e-4 and 1e-15 away from one or minus one."""
+    away = draw.choice([-1.0, 1.0], count) * (1.0 - 10.0 ** draw.uniform(-15.0, -4.0, count))
+    options = hard_box(draw, count)
+    one, other = options.vol_long, options.vol_short
+    spread = np.sqrt((one - other) ** 2 + 2.0 * one * other * (1.0 - away))
+    money = np.where(options.forward_short + options.strike > 1.0, options.forward_short + options.strike, 100.0)
+    return options._replace(correlation=away, forward_long=money * np.exp(draw.uniform(-4.0, 4.0, count) * spread))
+
+
 def panel_ends(f1: float, f2: float, k: float, a: float, b: float, r: float) -> Array:
     """Ends of the panels: half-unit steps, and steps that double away from each crossing of the money and each
     extreme of the conditional moneyness, from a sixteenth of the conditional option's own width."""
@@ -314,11 +324,13 @@ def main() -> None:
     yardstick_figures("hard box", hard_box(draw, count))
     yardstick_figures("ordinary box", ordinary_box(draw, count // 4))
     closed_form_figures(ordinary_box(draw, 200_000))
-    shifted_figures(draw, 100_000)
-    margrabe_figures(hard_box(draw, count // 4))
-    black_figures(draw, count // 2)
-    bachelier_figures(draw, count // 2)
-    bachelier_model_gap(ordinary_box(draw, 200_000))
+    # Each with draws of its own, so that a change to one leaves the others' figures as they are quoted.
+    yardstick_figures("next to full correlation", corner_box(np.random.default_rng(1), count // 2))
+    shifted_figures(np.random.default_rng(2), 100_000)
+    margrabe_figures(hard_box(np.random.default_rng(3), count // 4))
+    black_figures(np.random.default_rng(4), count // 2)
+    bachelier_figures(np.random.default_rng(5), count // 2)
+    bachelier_model_gap(ordinary_box(np.random.default_rng(6), 200_000))
 
 
 if __name__ == "__main__":
