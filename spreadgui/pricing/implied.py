@@ -11,9 +11,9 @@ safeguarded search (`implied_search`).
 within the bar (so that a bar that reaches where the value flattens is as long as that makes it); either way from the
 correlation, up to the far end of -1..1 where that says no more. It is a local statement: with premiums rounded to
 0.01 the truth lay outside the bar in 120 of 17,136 solved quotes (0.7 %) of a hard box, by up to five bars where the
-slope falls by far within a long one, and in 4 of 39,922 of an ordinary box. A quote whose value moves by less than `LEAST_SLOPE`
-of the larger forward per 1.0 of correlation, or whose bar is one or longer, does not identify its correlation: the
-one found is handed back, but its status says so. Without time or volatility in a leg or a discount factor, or for a
+slope falls by far within a long one, and in 4 of 39,922 of an ordinary box. A quote whose value moves by less than
+`LEAST_SLOPE` of the larger forward per 1.0 of correlation, or whose bar is one or longer, does not identify its
+correlation: the one found is handed back, but its status says so. Without time or volatility in a leg or a discount factor, or for a
 forward, the correlation has no say and is NaN.
 
 **Implied spread volatility** is the volatility of the price difference in price units (normal, as in Bachelier's
@@ -333,9 +333,8 @@ def spread_volatility(
     the argument otherwise. Status: `solved`; `below floor` (NaN) where the premium is under the discounted intrinsic
     value by the tolerance or more; `not identified` where the premium is intrinsic to within it, so that any
     volatility small enough will do (the one found is handed back), or where time or discount factor is zero (NaN).
-    There is no ceiling. Relative error
-    against 60 digits on premiums up to six deviations out of the money: median 1.8e-16, 99th percentile 7.6e-16, worst
-    1.3e-15 (tests/benchmarks/implied_cost.py).
+    There is no ceiling. Relative error against 60 digits on premiums up to six deviations out of the money: median
+    1.8e-16, 99th percentile 7.6e-16, worst 1.3e-15 (tests/benchmarks/implied_cost.py).
 
     >>> volatility, status = spread_volatility([8.0, 1.0, 2.0], 100.0, 96.0, 2.0, 1.0)
     >>> volatility.round(3).tolist(), status.tolist()
