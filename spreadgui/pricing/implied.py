@@ -13,8 +13,8 @@ correlation, up to the far end of -1..1 where that says no more. It is a local s
 0.01 the truth lay outside the bar in 120 of 17,136 solved quotes (0.7 %) of a hard box, by up to five bars where the
 slope falls by far within a long one, and in 4 of 39,922 of an ordinary box. A quote whose value moves by less than
 `LEAST_SLOPE` of the larger forward per 1.0 of correlation, or whose bar is one or longer, does not identify its
-correlation: the one found is handed back, but its status says so. Without time or volatility in a leg or a discount factor, or for a
-forward, the correlation has no say and is NaN.
+correlation: the one found is handed back, but its status says so. Without time or volatility in a leg or a discount
+factor, or for a forward, the correlation has no say and is NaN.
 
 **Implied spread volatility** is the volatility of the price difference in price units (normal, as in Bachelier's
 formula), not a lognormal one: a spread can be zero or negative, and two options on one pair of legs are compared by
