@@ -12,9 +12,16 @@ as good as any other, and forwards may be any number within the room's limits fo
 **absolute**: units of price per square root of a year, of the legs as the caller has folded the ratios in (a leg b F
 has volatility b s).
 
-Measured against 40-digit arithmetic over the box of tests/pricing/test_bachelier.py: values within 4e-15 of the
-larger of value and deviation, sensitivities within 1e-13 relative; time values keep 13 digits however far from the
-money.
+Measured against 40 digits for forwards of -200..200, volatilities of 0.5..250, correlation within 0.9999, strikes
+within six deviations of the money: the error is at most 1.9e-16 of the forwards, strike and deviation added up, 99th
+percentile 1.0e-16; in values median 1.7e-16, 99th percentile 1.7e-14, worst 4.4e-13, which is what the rounding of the
+moneyness forces. Time values keep 13 digits however far from the money.
+
+The model is another one than lognormal legs, and by how much it differs is no error of either. With each absolute
+volatility taken as volatility x forward the value less the Yardstick's is over the ordinary box (strikes of -0.5..0.5
+short forwards, volatilities 10..60 %, 0.1..3 years, correlation -0.9..0.95, long forward within two deviations of the
+money), in short forwards, median 1.1e-2, 99th percentile 3.6e-1, worst 6.0; where neither leg's deviation to expiry is
+above 0.15, 4.8e-4, 2.5e-3 and 4.3e-3; in 68 % of all it is the dearer one (tests/benchmarks/pricing_accuracy.py).
 """
 
 from __future__ import annotations

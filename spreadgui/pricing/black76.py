@@ -74,7 +74,10 @@ def value(
     Arrays broadcast together: `forward` above zero, `vol` zero or above as an annualised decimal, `expiry` in years,
     `discount` the factor from payment to today; `kind` is "call", "put" or "forward" for forward - strike. A strike
     of zero or below makes the call the forward and the put worthless. Raises `ValueError` naming the argument for
-    anything outside these bounds. Exact to rounding.
+    anything outside these bounds. Exact to rounding: over deviations to expiry of 0.005..2.5 and strikes within four
+    of them the error against 40 digits is, in forwards, median 1.8e-17, 99th percentile 1.8e-16, worst 3.2e-16, and
+    in values 1.3e-15, 4.4e-13 and 1.7e-12, the worst four deviations out of the money
+    (tests/benchmarks/pricing_accuracy.py).
 
     >>> round(float(value(100.0, 95.0, 0.3, 1.0, 0.95)), 6)
     13.578967

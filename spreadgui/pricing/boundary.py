@@ -36,6 +36,10 @@ NEWTON_STEPS = 3
 FARTHEST_STEP = 5.0
 # A foot is good enough when it is within half a standard deviation, measured along the boundary.
 NEAR_ENOUGH = 0.25
+# From this correlation on a boundary may run through the weight twice as a pair of arms, steep enough for the frame on
+# the farther one to cost digits on the nearer.
+TWO_ARMS = 1.0 - 1e-5
+HALVINGS = 60
 
 
 class Plane(NamedTuple):
@@ -105,7 +109,36 @@ def _foot(options: Plane) -> Array:
     lost = np.flatnonzero(~(force * force <= NEAR_ENOUGH * curvature))
     if lost.size:
         tau[lost] = _bisected_foot(Plane(*(field[lost] for field in options)))
+    paired = np.flatnonzero((options.correlation > TWO_ARMS) & (options.deviation_first < options.deviation_second))
+    if paired.size:
+        tau[paired] = _nearest_foot(Plane(*(field[paired] for field in options)), tau[paired])
     return tau
+
+
+def _far(options: Plane, tau: Array) -> Array:
+    """The squared distance to the middle of the weight that `_pull` differentiates."""
+    _, _, a, b, rho = options
+    gap_first, gap_second = _level(options, tau)[0] / a - 0.5 * rho * b, tau / b - 0.5 * rho * a
+    return np.asarray(0.5 * ((gap_first + gap_second) ** 2 / (1.0 + rho) + (gap_first - gap_second) ** 2 / (1.0 - rho)))
+
+
+def _nearest_foot(options: Plane, tau: Array) -> Array:
+    """The nearest of the foot found and those of the two arms, which part where the short leg's share of S1 is a/b."""
+    share = options.deviation_first / options.deviation_second
+    turn = np.log(share / (1.0 - share)) + np.log(options.strike / options.short)
+    nearest, least = tau, _far(options, tau)
+    for toward in (-1.0, 1.0):
+        inner, outer = turn, turn + toward
+        for _ in range(9):
+            outer = np.where(toward * _pull(options, outer)[0] < 0.0, turn + 2.0 * (outer - turn), outer)
+        for _ in range(HALVINGS):
+            middle = 0.5 * (inner + outer)
+            beyond = toward * _pull(options, middle)[0] > 0.0
+            inner, outer = np.where(beyond, inner, middle), np.where(beyond, middle, outer)
+        found = 0.5 * (inner + outer)
+        far = _far(options, found)
+        nearest, least = np.where(far < least, found, nearest), np.minimum(far, least)
+    return nearest
 
 
 def _bisected_foot(options: Plane) -> Array:

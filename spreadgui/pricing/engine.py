@@ -99,8 +99,9 @@ def _plane(
         left = left[~np.isfinite(found_error)]
     for start in range(0, left.size, PANEL_ROWS):
         some = left[start : start + PANEL_ROWS]
-        layers[:, some] = panels.integrate(line.only(some), b[some])[: len(layers)]
-        side[some], error[some] = 1.0, PANEL_ERROR
+        found, loose = panels.integrate(line.only(some), b[some])
+        layers[:, some] = found[: len(layers)]
+        side[some], error[some] = 1.0, PANEL_ERROR + loose
     if edge:
         layers[3:] /= a * b * np.sqrt((1.0 - rho) * (1.0 + rho))
     out.side[rows], out.error[rows] = side, error

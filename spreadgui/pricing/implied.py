@@ -9,12 +9,12 @@ safeguarded search (`implied_search`).
 
 **What a correlation is worth.** The error bar is the price tolerance over the sensitivity, the smallest sensitivity
 within the bar (so that a bar that reaches where the value flattens is as long as that makes it); either way from the
-correlation, up to the far end of -1..1 where that says no more. It is a local statement: with premiums of the hard
-box rounded to 0.01, the truth lay outside the bar in 8 of 1,252 solved quotes, all with the slope falling by far
-within a long bar. A quote whose value moves by less than `LEAST_SLOPE`
-of the larger forward per 1.0 of correlation, or whose bar is one or longer, does not identify its correlation: the
-one found is handed back, but its status says so. Without time or volatility in a leg or a discount factor, or for a
-forward, the correlation has no say and is NaN.
+correlation, up to the far end of -1..1 where that says no more. It is a local statement: with premiums rounded to
+0.01 the truth lay outside the bar in 120 of 17,136 solved quotes (0.7 %) of a hard box, by up to five bars where the
+slope falls by far within a long one, and in 4 of 39,922 of an ordinary box. A quote whose value moves by less than
+`LEAST_SLOPE` of the larger forward per 1.0 of correlation, or whose bar is one or longer, does not identify its
+correlation: the one found is handed back, but its status says so. Without time or volatility in a leg or a discount
+factor, or for a forward, the correlation has no say and is NaN.
 
 **Implied spread volatility** is the volatility of the price difference in price units (normal, as in Bachelier's
 formula), not a lognormal one: a spread can be zero or negative, and two options on one pair of legs are compared by
@@ -257,6 +257,13 @@ def correlation(
     for correlation +1 or -1; `not identified` where the premium does not tell: the correlation is the one found, one
     of many that do, or NaN where correlation has no say at all. See the module.
 
+    Measured on 20,000 calls and as many puts: over an ordinary box (strikes of -0.5..0.5 short forwards, volatilities
+    10..60 %, 0.1..3 years, correlation -0.9..0.95, long forward within two deviations of the money) 2.1 Yardstick
+    evaluations a quote, 99th percentile 3, most 6, and the correlation recovered to median 1.4e-15, 99th percentile
+    1.7e-13, worst 2.5e-11; over a hard one (correlation within 0.9999, deviations to expiry 0.005..2.5, strikes -2..2
+    short forwards) 2.1, 6 and 14, and 1.1e-14, 2.7e-11, 1.3e-8 of those it solves, 57 %
+    (tests/benchmarks/implied_cost.py).
+
     >>> found, status = correlation([8.0, 1.0, 40.0], 100.0, 96.0, 2.0, 0.3, 0.25, 1.0)
     >>> found.round(3).tolist(), status.tolist()
     ([0.809, nan, nan], ['solved', 'below floor', 'above ceiling'])
@@ -326,7 +333,8 @@ def spread_volatility(
     the argument otherwise. Status: `solved`; `below floor` (NaN) where the premium is under the discounted intrinsic
     value by the tolerance or more; `not identified` where the premium is intrinsic to within it, so that any
     volatility small enough will do (the one found is handed back), or where time or discount factor is zero (NaN).
-    There is no ceiling. Measured: 1.4e-15 relative beyond what the rounding of the premium forces.
+    There is no ceiling. Relative error against 60 digits on premiums up to six deviations out of the money: median
+    1.8e-16, 99th percentile 7.6e-16, worst 1.3e-15 (tests/benchmarks/implied_cost.py).
 
     >>> volatility, status = spread_volatility([8.0, 1.0, 2.0], 100.0, 96.0, 2.0, 1.0)
     >>> volatility.round(3).tolist(), status.tolist()

@@ -71,7 +71,12 @@ def value(
     F_long + F_short, 0) or "forward" for F_long - F_short - K, one for the whole call. An `executor` is given blocks
     of rows; without one they run inline.
 
-    Raises `ValueError` naming the argument for anything outside these bounds, and for any strike but zero.
+    Returns a float64 array of the broadcast shape, never below the intrinsic value. Raises `ValueError` naming the
+    argument for anything outside these bounds, and for any strike but zero. Exact to rounding: over deviations to
+    expiry of 0.005..2.5, correlation within 0.9999, long forward within four deviations of the short one, the error
+    against 40 digits is, in larger forwards: median 2.2e-18, 99th percentile 1.8e-16, worst 2.4e-16. The Yardstick
+    hands a strike of zero to this very formula; just off it, where it integrates along the boundary, the two differ by
+    median 2.2e-16, 99th percentile 3.6e-14, worst 1.3e-13 (tests/benchmarks/pricing_accuracy.py).
 
     >>> print(round(float(value(22.088176, 20.120361, 0.0, 0.20, 0.20, 0.50, 0.10, 0.990050)), 4))
     1.9891

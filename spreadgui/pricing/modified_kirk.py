@@ -126,7 +126,8 @@ def value(
     F_short + K above zero. An `executor` is given blocks of rows; without one they run inline.
 
     Where the corrected volatility is not above zero, far out of the money, it is taken as zero and the value is the
-    intrinsic one.
+    intrinsic one. Where Kirk's own volatility comes near zero (legs that all but hedge each other: equal volatilities,
+    correlation next to one, a small strike) the correction has no limit, and a value says little.
 
     Returns a float64 array of the broadcast shape, never below the intrinsic value. Raises `ValueError` naming the
     argument for anything outside these bounds. Error against the Yardstick over the box named in `kirk.value`, in

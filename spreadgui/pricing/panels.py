@@ -33,6 +33,7 @@ LONGEST_STEP = 2.5
 BISECTIONS = 100
 # A step this small beside its place cannot be halved any more.
 RESOLUTION = 1e-15
+LAST_DIGIT = 2.0**-53
 PANELS_AT_ONCE = 4096
 
 
@@ -102,20 +103,23 @@ def _span(line: Boundary, deviation_short: Array) -> Array:
     return np.maximum(20.0 * deviation_short + 10.0, np.abs(line.tau) + 40.0 / slowest + 40.0)
 
 
-def integrate(line: Boundary, deviation_short: Array) -> Array:
+def integrate(line: Boundary, deviation_short: Array) -> tuple[Array, Array]:
     """Layers (6, n) as the trapezoid rule gives them: masses about the origin and the two legs' weights, then the
-    integrals in tau of S1 phi2, S2 phi2 and S2^2/S1 phi2 over the first forward."""
+    integrals in tau of S1 phi2, S2 phi2 and S2^2/S1 phi2 over the first forward. And what the masses, added up, may
+    have lost to rounding: a node on a second arm is placed by its distance in tau from the frame on the first, whose
+    last digit the boundary's speed turns into standard deviations."""
     rows, start, stop, sunk_rows, low, high = _cut(line, _span(line, deviation_short))
     total = np.zeros((6, line.tau.size))
     for layer, shift in enumerate((np.zeros_like(line.tau), line.along_first, line.along_second)):
         mass = ndtr(high - shift[sunk_rows]) - ndtr(low - shift[sunk_rows])
         total[layer] = np.bincount(sunk_rows, mass, minlength=line.tau.size)
-    sums = np.empty((6, rows.size))
+    sums = np.empty((7, rows.size))
     for first in range(0, rows.size, PANELS_AT_ONCE):
         some = slice(first, first + PANELS_AT_ONCE)
         _panel_sums(line, rows[some], start[some], stop[some], sums[:, some])
     # Added up in the order of each row's own panels, whatever rows stand beside it.
-    return total + np.stack([np.bincount(rows, layer, minlength=line.tau.size) for layer in sums])
+    added = np.stack([np.bincount(rows, layer, minlength=line.tau.size) for layer in sums])
+    return total + added[:6], added[6]
 
 
 def _panel_sums(line: Boundary, rows: Rows, start: Array, stop: Array, sums: Array) -> None:
@@ -128,14 +132,14 @@ def _panel_sums(line: Boundary, rows: Rows, start: Array, stop: Array, sums: Arr
     x, y = _place(part, distance, rise)
     along = weight * (part.y_first * share + part.y_second)
     edge = weight * np.exp(part.log_first + rise - 0.5 * (x * x + y * y)) / (2.0 * np.pi)
-    layers = (
+    masses = (
         _mass(x, y, along),
         _mass(x - part.across_first, y - part.along_first, along),
         _mass(x - part.across_second, y - part.along_second, along),
-        edge,
-        edge * share,
-        edge * share * share,
     )
+    speed = np.hypot(part.x_first * share + part.x_second, part.y_first * share + part.y_second)
+    loose = LAST_DIGIT * np.abs(distance) * speed * np.abs(np.stack(masses)).sum(axis=0)
+    layers = (*masses, edge, edge * share, edge * share * share, loose)
     for target, layer in zip(sums, layers, strict=True):
         layer.reshape(-1, NODES.size).sum(axis=1, out=target)
 

@@ -15,6 +15,13 @@ negative (a price that cannot fall to zero) as long as the shifted forward stays
 A volatility belongs to its shift: to keep a leg's absolute moves when the shift changes, hold vol (F + shift) (common
 practice, no source). As the shifts grow with that product held, the legs become normal and the values Bachelier's.
 
+Measured against the Yardstick on the shifted legs for forwards of -20..100, shifts that leave 20..150 of them, strikes
+-30..30, volatilities 10..60 % over 0.1..3 years, correlation -0.9..0.95, in shifted short forwards (median, 99th
+percentile, worst): Kirk 5.6e-4, 2.4e-2, 6.9e-2; modified Kirk 1.9e-4, 1.3e-2, 5.6e-2; Bjerksund-Stensland 6.9e-5,
+6.2e-3, 4.0e-2; the Yardstick itself against an independent integration 5.8e-17, 4.2e-14, 1.6e-13
+(tests/benchmarks/pricing_accuracy.py). They are somewhat worse than over the ordinary box of the plain methods because
+legs and strike stand in looser proportion here.
+
 `arguments` is all there is to it; whatever takes forwards and a strike, `implied.correlation` among it, can be given
 its result. `value` and `sensitivities` (and their outright fellows for Black-76) call a method that way.
 """

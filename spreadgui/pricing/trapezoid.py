@@ -40,7 +40,7 @@ ACCEPTED_ERROR = 1e-12
 STEPS = np.array([0.1, 0.15, 0.25, 0.4, 0.5, 0.8])
 EXPONENTS = np.array([3.0, 2.0, 1.7, 1.45, 1.3, 1.1])
 # Steeper boundaries (a correlation or a deviation next to its limit) lose digits in the node positions used here.
-STEEPEST = 1e5
+STEEPEST = 2e4
 LONGEST_STRIDE = 1.0
 TURN_CARE = 2.0
 

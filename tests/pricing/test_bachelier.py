@@ -99,6 +99,83 @@ def test_sensitivities_are_the_derivatives(case: tuple[float, ...], kind: str) -
         assert float(getattr(found, field)) == pytest.approx(DISCOUNT * float(number), rel=1e-12), field
 
 
+def hard_cases() -> list[tuple[float, ...]]:
+    """Correlation -0.9999..0.9999, deviations of a two-hundredth to two and a half times a price of 100, strikes up to
+    three and a half deviations from the money, forwards and strikes of either sign."""
+    draw = np.random.default_rng(20_260_104)
+    cases = []
+    for place in range(24):
+        one, other = np.exp(draw.uniform(np.log(0.5), np.log(250.0), 2))
+        correlation = (-0.9999, 0.9999, draw.uniform(-0.9999, 0.9999), 1.0 - 10.0 ** draw.uniform(-4, -1))[place % 4]
+        width = np.sqrt((one - other) ** 2 + 2.0 * one * other * (1.0 - correlation))
+        long, short = draw.uniform(-200.0, 200.0, 2)
+        strike, time = long - short + draw.uniform(-3.5, 3.5) * width, draw.uniform(0.1, 2.0)
+        cases.append(tuple(map(float, (long, short, strike, one / time**0.5, other / time**0.5, correlation, time))))
+    return cases
+
+
+@pytest.mark.parametrize("case", hard_cases())
+def test_sensitivities_are_the_derivatives_over_a_hard_box(case: tuple[float, ...]) -> None:
+    """Relative 1e-9 against differences at 50 digits, the value and the deltas as well: nothing here cancels."""
+    names = ("delta_long", "delta_short", "vega_long", "vega_short", "correlation_sensitivity", "theta")
+    with mp.workdps(50):
+        point = tuple(mp.mpf(number) for number in case)
+        firsts = [mp.diff(call, point, tuple(int(one == other) for other in range(7))) for one in (0, 1, 3, 4, 5, 6)]
+        gamma = mp.diff(call, point, (2, 0, 0, 0, 0, 0, 0))
+        exact = dict(zip(names, firsts, strict=True))
+        exact |= {"value": call(*point), "gamma_long": gamma, "gamma_short": gamma, "gamma_cross": -gamma}
+        exact["theta"] *= -1
+        forward = {"value": point[0] - point[1] - point[2], "delta_long": 1, "delta_short": -1}
+    for kind in ("call", "put"):
+        found = bachelier.sensitivities(*case, DISCOUNT, kind=kind)
+        for field, number in exact.items():
+            expected = float(number - (forward.get(field, 0) if kind == "put" else 0))
+            assert float(getattr(found, field)) == pytest.approx(DISCOUNT * expected, rel=1e-9, abs=0.0), (kind, field)
+
+
+@given(option=options(), kind=st.sampled_from(["call", "put"]))
+@settings(max_examples=80, deadline=None)
+def test_every_limit_is_reached_as_fast_as_the_legs_reach_theirs(option: tuple[float, ...], kind: str) -> None:
+    """The payoff moves by no more than a leg does, and two normals a deviation v apart are sqrt(2/pi) v apart on
+    average; so the step onto a limit is bounded at every distance, with nothing to tune."""
+    _, _, _, vol_long, vol_short, _, expiry, discount = option
+    small = np.append(10.0 ** np.linspace(0.0, -18.0, 37), 0.0)
+    root, mean = expiry**0.5, discount * (2.0 / np.pi) ** 0.5
+    apart = np.sqrt(2.0 * small) * root
+    steps = {
+        3: (small, small * root),
+        4: (small, small * root),
+        6: (small, (vol_long + vol_short) * np.sqrt(small)),
+        5: (1.0 - small, np.minimum(vol_long, vol_short) * np.sqrt(2.0 * (1.0 - (1.0 - small))) * root),
+    }
+    for place, (column, distance) in steps.items():
+        value = bachelier.value(*option[:place], column, *option[place + 1 :], kind=kind)
+        assert np.all(np.abs(value - value[-1]) <= mean * distance + 1e-14 * size(option)), place
+    value = bachelier.value(*option[:5], small - 1.0, *option[6:], kind=kind)
+    assert np.all(np.abs(value - value[-1]) <= mean * np.minimum(vol_long, vol_short) * apart + 1e-14 * size(option))
+
+
+@given(option=options(), other=options(), kind=st.sampled_from(["call", "put"]))
+@settings(max_examples=80, deadline=None)
+def test_the_value_is_convex_in_forwards_and_strike_together(
+    option: tuple[float, ...], other: tuple[float, ...], kind: str
+) -> None:
+    share = np.linspace(0.0, 1.0, 33)[:, None]
+    path = (1.0 - share) * np.array(option[:3]) + share * np.array(other[:3])
+    value = bachelier.value(*path.T, *option[3:], kind=kind)
+    assert np.all(np.diff(value, 2) >= -4e-14 * (size(option) + size(other)))
+
+
+@given(option=options())
+@settings(max_examples=80, deadline=None)
+def test_more_volatility_is_never_worth_less_from_the_other_legs_share_on(option: tuple[float, ...]) -> None:
+    """The spread's variance s1^2 - 2 rho s1 s2 + s2^2 falls in s1 until s1 = rho s2 and rises from there."""
+    turn = max(option[5] * option[4], 0.0)
+    for column, sign in ((np.linspace(turn, turn + 150.0, 41), 1.0), (np.linspace(0.0, turn, 41), -1.0)):
+        value = bachelier.value(*option[:3], column, *option[4:])
+        assert np.all(sign * np.diff(value) >= -1e-14 * (size(option) + 300.0))
+
+
 @pytest.mark.parametrize("kind", ["call", "put"])
 @pytest.mark.parametrize("strike", [-60.0, -21.0, 5.0])
 def test_outright_sensitivities_are_the_derivatives(strike: float, kind: str) -> None:
@@ -166,7 +243,8 @@ def test_values_grow_with_the_unit_of_money_and_move_with_its_origin(option: tup
     unit = 2.0**power
     scaled = bachelier.value(*(one * unit for one in option[:5]), *option[5:])
     value = bachelier.value(*option)
-    assert scaled == pytest.approx(unit * value, rel=1e-13, abs=1e-300)  # below, doubles have fewer digits
+    # The root of an odd power of two is no double; forty deviations out, where values end, that costs 40^2 last digits.
+    assert scaled == pytest.approx(unit * value, rel=2e-12, abs=1e-300)
     # A forward of 512 and more keeps about 1e-13 of an amount: what is added to it loses its digits beyond.
     moved = bachelier.value(option[0] + 512.0, option[1] + 512.0, *option[2:])
     assert moved == pytest.approx(value, rel=1e-9, abs=1e-12 * (512.0 + size(option)))

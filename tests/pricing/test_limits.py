@@ -119,6 +119,26 @@ def test_one_factor_is_integrated_exactly(
     assert error <= 1e-11
 
 
+# Undiscounted calls on 1 against 13 and 0.5, deviations 0.0625 and 0.75, by adaptive integration of the conditional
+# exercise probabilities at 50 digits, for the doubles nearest these correlations.
+TWO_ARMS = {1.0 - 1e-6: 5.5651097720925854e-09, 1.0 - 1e-8: 5.5650205634768745e-09, 1.0 - 1e-12: 5.56501966247503e-09}
+
+
+@pytest.mark.parametrize("correlation", TWO_ARMS)
+def test_the_nearer_of_two_steep_arms_of_the_boundary_is_the_one_looked_at_closely(correlation: float) -> None:
+    """Next to full correlation a short leg that moves more is met twice, at -5 and at -11 deviations here."""
+    found = yardstick.value(1.0, 13.0, 0.5, 0.0625, 0.75, correlation, 1.0)
+    assert found == pytest.approx(TWO_ARMS[correlation], rel=1e-10)
+
+
+def test_where_two_arms_carry_weight_the_error_is_owned_up_to() -> None:
+    """The one factor's value is the limit, and to first order the value rises by 1.14 times the distance from it."""
+    away = np.append(np.logspace(-12.0, -15.5, 36), 0.0)
+    value, error = yardstick.estimate(0.5, 1.0, -1.0, 2.0, 1.0, 1.0 - away, 1.0)
+    assert np.all(np.abs(value - value[-1]) <= error + 1.2 * away)
+    assert np.all(error <= 1e-8)
+
+
 @pytest.mark.parametrize("kind", ["call", "put"])
 @pytest.mark.parametrize("strike", [-140.0, -20.0, 0.0, 7.0])
 def test_a_leg_without_volatility_leaves_black76(strike: float, kind: str) -> None:
