@@ -1,10 +1,10 @@
 """The world the formulas speak of, simulated: two factors, forwards that are martingales, payoffs averaged.
 
 Correlated shocks come from independent ones by w2 = rho b1 + sqrt(1 - rho^2) b2 (common practice, no source). Seeds are
-fixed, so that a run decides nothing by luck; the criterion is one that another seed would pass in all but about one
-run of two hundred. With z the estimate less the theory in its own standard errors, independent from case to case: no
-|z| above 4.5, and the sum of z^2 within the central 99.8 % of its chi-square distribution - too large says the theory
-is off, too small that the standard errors are.
+fixed, so that a run decides nothing by luck; the criterion is one that another seed fails about once in five hundred.
+With z the estimate less the theory in its own standard errors, independent from case to case: no |z| above 4.5, and the
+sum of z^2 within the central 99.8 % of its chi-square distribution - too large says the theory is off, too small that
+the standard errors are.
 """
 
 from __future__ import annotations
