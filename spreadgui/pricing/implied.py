@@ -307,7 +307,7 @@ def spread_volatility_with_error(
         middle, low, high = (
             _deviations(quotes.target + move, moneyness) / root_time for move in (0.0, -allowed, allowed)
         )
-    bar = np.maximum(high - middle, middle - low)
+        bar = np.maximum(high - middle, middle - low)
     below = telling & (quotes.target <= -allowed)
     vague = ~telling | (bar >= middle)
     status = np.select([below, vague], [Status.BELOW_FLOOR, Status.NOT_IDENTIFIED], Status.SOLVED).astype(_WORDS)
