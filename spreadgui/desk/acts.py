@@ -48,6 +48,7 @@ ACTS: tuple[Act, ...] = (
         on_bar=True),
     Act("go_positions", "Go to Positions", "View", "Put the keyboard into the grid.", "Ctrl+1"),
     Act("go_marks", "Go to Marks", "View", "Put the keyboard into the marks.", "Ctrl+4"),
+    Act("go_correlations", "Go to Correlations", "View", "Put the keyboard into the correlations.", "Ctrl+5"),
     Act("go_landscape", "Go to Landscape", "View", "Put the keyboard into the Landscape.", "Ctrl+2"),
     Act("go_reading", "Go to Reading", "View", "Put the keyboard into the Reading.", "Ctrl+3"),
     Act("switch_look", "Light or dark", "View", "Switch between the light and the dark look.", "Ctrl+L", "theme-dark",

@@ -19,7 +19,7 @@ if TYPE_CHECKING:
     from spreadgui.desk.files import BookFiles
     from spreadgui.desk.grid.pane import PositionsPane
     from spreadgui.desk.landscape.pane import LandscapePane
-    from spreadgui.desk.markets.marks_pane import MarksPane
+    from spreadgui.desk.markets.deck import MarketDeck
     from spreadgui.desk.message import MessageStrip
     from spreadgui.desk.panels.reading import ReadingPane
     from spreadgui.desk.status import StatusLine
@@ -51,7 +51,7 @@ class Window(QMainWindow):
         super().__init__()
         self.theme = theme
         self.landscape: LandscapePane | None = None
-        self.marks: MarksPane | None = None
+        self.markets: MarketDeck | None = None
         self.handlers: dict[str, Callable[[], object]] = {}
         self._opening = QLabel("Opening the book…")
         self._opening.setAlignment(Qt.AlignmentFlag.AlignCenter)
@@ -152,7 +152,8 @@ class Window(QMainWindow):
             "duplicate_rows": self.positions.duplicate_rows,
             "delete_rows": self.positions.delete_rows,
             "go_positions": self.positions.view.setFocus,
-            "go_marks": self._go_to_marks,
+            "go_marks": lambda: self._go_to_market("marks"),
+            "go_correlations": lambda: self._go_to_market("correlations"),
             "go_landscape": self._go_to_landscape,
             "go_reading": self.reading.setFocus,
             "switch_look": self.switch_look,
@@ -186,7 +187,7 @@ class Window(QMainWindow):
         self._right.replaceWidget(0, self.landscape)
         self._vacant.deleteLater()
         self._share_height()
-        self._bring_in_marks()
+        self._bring_in_markets()
         self.landscape.asked.connect(self._ask_again)
         self.workbench.drawn.connect(self.landscape.show_surface)
         self.workbench.drawn.connect(self._late.stop)  # the drawing is the last answer about a row
@@ -196,14 +197,14 @@ class Window(QMainWindow):
         self.workbench.begin()
         self._ask_again()
 
-    def _bring_in_marks(self) -> None:
-        """Marks under Positions: what moves the one is edited in the other."""
-        from spreadgui.desk.markets.marks_pane import MarksPane
+    def _bring_in_markets(self) -> None:
+        """The markets under Positions: what moves the one is edited in the other."""
+        from spreadgui.desk.markets.deck import MarketDeck
 
-        self.marks = MarksPane(self.workbench, self.theme)
-        self.marks.told.connect(self.status.tell)
+        self.markets = MarketDeck(self.workbench, self.theme)
+        self.markets.told.connect(self.status.tell)
         height = sum(self._left.sizes())
-        self._left.addWidget(self.marks)
+        self._left.addWidget(self.markets)
         self._left.setStretchFactor(0, 1)
         self._left.setSizes([round(0.58 * height), height - round(0.58 * height)])
 
@@ -235,9 +236,9 @@ class Window(QMainWindow):
         if self.landscape is not None:
             self.landscape.setFocus()
 
-    def _go_to_marks(self) -> None:
-        if self.marks is not None:
-            self.marks.view.setFocus()
+    def _go_to_market(self, key: str) -> None:
+        if self.markets is not None:
+            self.markets.go_to(key)
 
     @Slot()
     def _on_followed(self) -> None:
@@ -285,7 +286,7 @@ class Window(QMainWindow):
         assert isinstance(app, QApplication)
         apply(app, self.theme)
         renew_icons(self, self.theme)
-        for pane in (self.positions, self.marks, self.reading, self.landscape):
+        for pane in (self.positions, self.markets, self.reading, self.landscape):
             if pane is not None:
                 pane.set_theme(self.theme)
 

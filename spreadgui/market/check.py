@@ -12,6 +12,8 @@ from spreadgui.book.records import Book, Market
 from spreadgui.market.contracts import Law, resolve
 from spreadgui.market.quotes import Quotes
 from spreadgui.market.strips import is_week
+from spreadgui.market.zero_curve import curve_faults
+from spreadgui.market.zero_rates import ZeroRates
 
 # Ten times the square root of time in a year is beyond any market; such a figure is one in per cent.
 _HIGHEST_VOLATILITY = 10.0
@@ -25,6 +27,14 @@ def faults_of(book: Book) -> list[Fault]:
 def _book_faults(book: Book) -> Iterator[Fault]:
     if not 0 <= book.gap_tolerance < math.inf:
         yield Fault("gap_tolerance", f"is {book.gap_tolerance:g}; it cannot be below zero")
+    yield from _curve_faults(book)
+
+
+def _curve_faults(book: Book) -> Iterator[Fault]:
+    points = tuple((point.date, point.rate) for point in book.zero_curve)
+    for fault in curve_faults(book.valuation_date, points) if points else ():
+        where, _, what = fault.partition(": ")
+        yield Fault(where.replace("points", "zero_curve"), what)
 
 
 def _market_faults(book: Book) -> Iterator[Fault]:
@@ -108,9 +118,9 @@ def _correlation_faults(book: Book) -> Iterator[Fault]:
 
 
 def _position_faults(book: Book) -> Iterator[Fault]:
-    quotes = Quotes.of(book)
+    quotes, rates = Quotes.of(book), ZeroRates.of(book)
     for index, position in enumerate(book.positions):
-        resolved = resolve(position, quotes, book.valuation_date, book.zero_rate)
+        resolved = resolve(position, quotes, book.valuation_date, rates)
         for trouble in resolved.troubles:
             yield Fault(f"positions[{index}].{trouble.field}", trouble.sentence)
         highest = math.inf if resolved.law is Law.NORMAL else _HIGHEST_VOLATILITY

@@ -14,6 +14,7 @@ from spreadgui.book.records import Market, Position
 from spreadgui.market.quotes import Quotes, UnknownMarkError
 from spreadgui.market.strips import Strip, calendar_fault, exercises, strip_of
 from spreadgui.market.time import discount_factor, years
+from spreadgui.market.zero_rates import ZeroRates
 
 _NAN = math.nan
 
@@ -56,7 +57,7 @@ class ResolvedPosition:
 
     Forwards and shifts are the markets' own, before the ratios; under a normal law so are the volatilities, which are
     absolute then. `years` may be below zero when the option is past. A position with a `strip` is exercised as that
-    says; its `years` and `discount` are the means over the days.
+    says; its `years`, `discount` and `rate` are the means over the days. `rate` is the zero rate to the expiry.
     """
 
     shape: Shape = Shape.SPREAD
@@ -71,12 +72,16 @@ class ResolvedPosition:
     shift_short: float = 0.0
     years: float = _NAN
     discount: float = _NAN
+    rate: float = _NAN
     strip: Strip | None = None
     troubles: list[Trouble] = field(default_factory=list)
 
 
-def resolve(position: Position, quotes: Quotes, valuation_date: datetime.date, zero_rate: float) -> ResolvedPosition:
+def resolve(
+    position: Position, quotes: Quotes, valuation_date: datetime.date, zero_rates: ZeroRates | float
+) -> ResolvedPosition:
     """The inputs of `position`, with everything that stands in the way of pricing it listed in the order of the row."""
+    rates = zero_rates if isinstance(zero_rates, ZeroRates) else ZeroRates(zero_rates)
     resolved = ResolvedPosition(shape=_shape(position))
     if position.quantity is None:
         _incomplete(resolved, "quantity", "the quantity is missing")
@@ -85,10 +90,10 @@ def resolve(position: Position, quotes: Quotes, valuation_date: datetime.date, z
     _resolve_law(resolved, position, quotes)
     _resolve_correlation(resolved, position, quotes)
     if position.exercise == "once":
-        _resolve_time(resolved, position, valuation_date, zero_rate)
+        _resolve_time(resolved, position, valuation_date, rates)
     else:
         _resolve_strip(resolved, position, quotes, valuation_date)
-        _resolve_strip_time(resolved, position, zero_rate)
+        _resolve_strip_time(resolved, rates)
     _check_numbers(resolved, position)
     resolved.troubles.sort(key=lambda trouble: Position.__struct_fields__.index(trouble.field))
     return resolved
@@ -217,17 +222,20 @@ def _correlation_trouble(resolved: ResolvedPosition, position: Position, error: 
 
 
 def _resolve_time(
-    resolved: ResolvedPosition, position: Position, valuation_date: datetime.date, zero_rate: float
+    resolved: ResolvedPosition, position: Position, valuation_date: datetime.date, rates: ZeroRates
 ) -> None:
     if position.expiry is None:
         _incomplete(resolved, "expiry", "the expiry is missing")
         return
     resolved.years = years(valuation_date, position.expiry)
-    resolved.discount = discount_factor(zero_rate, resolved.years)
+    resolved.rate = rates.rate(resolved.years)
+    resolved.discount = discount_factor(resolved.rate, resolved.years)
     if resolved.years < 0:
         _refused(resolved, "expiry", f"expired on {position.expiry}, before the valuation date {valuation_date}")
+    elif rates.fault:
+        _refused(resolved, "expiry", rates.fault)
     elif not math.isfinite(resolved.discount):
-        _refused(resolved, "expiry", f"the zero rate {zero_rate:g} gives no discount factor for this expiry")
+        _refused(resolved, "expiry", f"the zero rate {resolved.rate:g} gives no discount factor for this expiry")
 
 
 def _resolve_strip(
@@ -268,14 +276,19 @@ def _daily_volatility(resolved: ResolvedPosition, position: Position, quotes: Qu
     return _NAN if daily is None else daily
 
 
-def _resolve_strip_time(resolved: ResolvedPosition, position: Position, zero_rate: float) -> None:
+def _resolve_strip_time(resolved: ResolvedPosition, rates: ZeroRates) -> None:
     if resolved.strip is None:
         return
-    discounts = [discount_factor(zero_rate, time) for time in resolved.strip.years.tolist()]
+    times = resolved.strip.years.tolist()
+    each = [rates.rate(time) for time in times]
+    discounts = [discount_factor(rate, time) for rate, time in zip(each, times, strict=True)]
+    resolved.rate = float(np.mean(each))
     resolved.years = float(np.mean(resolved.strip.years))
     resolved.discount = float(np.mean(discounts))
-    if not math.isfinite(resolved.discount):
-        _refused(resolved, "exercise", f"the zero rate {zero_rate:g} gives no discount factor for this strip")
+    if rates.fault:
+        _refused(resolved, "exercise", rates.fault)
+    elif not math.isfinite(resolved.discount):
+        _refused(resolved, "exercise", f"the zero rate {resolved.rate:g} gives no discount factor for this strip")
 
 
 def _check_numbers(resolved: ResolvedPosition, position: Position) -> None:

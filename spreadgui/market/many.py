@@ -19,6 +19,7 @@ from spreadgui.book.records import Position
 from spreadgui.market.contracts import Law, Shape
 from spreadgui.market.quotes import Quotes, UnknownMarkError
 from spreadgui.market.time import discount_factor, years
+from spreadgui.market.zero_rates import ZeroRates
 
 FloatArray = NDArray[np.float64]
 Flags = NDArray[np.bool_]
@@ -43,7 +44,7 @@ class ManyResolved:
 
 
 def resolve_many(
-    positions: Sequence[Position], quotes: Quotes, valuation_date: datetime.date, zero_rate: float
+    positions: Sequence[Position], quotes: Quotes, valuation_date: datetime.date, zero_rates: ZeroRates | float
 ) -> ManyResolved:
     """What `contracts.resolve` gives for each of `positions`, as far as it is `plain`."""
     fields: dict[str, list[Any]] = {key: [getattr(position, key) for position in positions] for key in _FIELDS}
@@ -51,7 +52,8 @@ def resolve_many(
     laws = long.law_beside(short), short.law_beside(long)
     shape = np.select([short.absent, long.absent], [Shape.LONG_LEG_ONLY, Shape.SHORT_LEG_ONLY], Shape.SPREAD)
     correlation, tied = _correlations(fields, long, short, quotes)
-    time, discount, timed = _times(fields["expiry"], valuation_date, zero_rate)
+    rates = zero_rates if isinstance(zero_rates, ZeroRates) else ZeroRates(zero_rates)
+    time, discount, rate, timed = _times(fields["expiry"], valuation_date, rates)
     once = np.array([exercise == "once" for exercise in fields["exercise"]], dtype=np.bool_)
     with np.errstate(invalid="ignore"):
         plain = once & timed & tied & (_floats(fields["quantity"]) >= 0.0)
@@ -60,7 +62,7 @@ def resolve_many(
     numbers = {
         "forward_long": long.forward, "forward_short": short.forward, "vol_long": long.vol, "vol_short": short.vol,
         "shift_long": long.shift, "shift_short": short.shift, "correlation": correlation,
-        "years": time, "discount": discount,
+        "years": time, "discount": discount, "rate": rate,
     }  # fmt: skip
     law = np.nan_to_num(np.where(long.absent, laws[1], laws[0]))
     units = [first or second for first, second in zip(long.units, short.units, strict=True)]
@@ -151,14 +153,16 @@ def _correlations(fields: dict[str, list[Any]], long: _Legs, short: _Legs, quote
 
 
 def _times(
-    expiries: list[datetime.date | None], valuation_date: datetime.date, zero_rate: float
-) -> tuple[FloatArray, FloatArray, Flags]:
-    """Years and discount factor to each expiry, and where there is one that is not past."""
+    expiries: list[datetime.date | None], valuation_date: datetime.date, rates: ZeroRates
+) -> tuple[FloatArray, FloatArray, FloatArray, Flags]:
+    """Years, discount factor and zero rate to each expiry, and where there is one that is not past."""
     day, days = _coded(expiries)
     time = np.array([np.nan if one is None else years(valuation_date, one) for one in days], dtype=np.float64)
-    discount = np.array([np.nan if np.isnan(one) else discount_factor(zero_rate, one) for one in time.tolist()])
-    good = (time >= 0.0) & np.isfinite(discount)
-    return time[day], discount[day], good[day]
+    rate = np.array([rates.rate(one) for one in time.tolist()], dtype=np.float64)
+    pairs = zip(rate.tolist(), time.tolist(), strict=True)
+    discount = np.array([np.nan if np.isnan(one) else discount_factor(each, one) for each, one in pairs])
+    good = (time >= 0.0) & np.isfinite(discount) & (rates.fault == "")
+    return time[day], discount[day], rate[day], good[day]
 
 
 def _coded(values: Iterable[Hashable]) -> tuple[Codes, list[Any]]:

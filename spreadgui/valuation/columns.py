@@ -179,6 +179,8 @@ COLUMNS: tuple[Column, ...] = (
            numbers=of_input("years"), decimals=3),
     Column("discount", "Discount factor", "Value today of one unit of money at the expiry.", "",
            numbers=of_input("discount"), decimals=5),
+    Column("rate", "Zero rate", "The zero rate to the expiry, from the book's curve or its flat rate.", "% a year",
+           numbers=of_input("rate"), scale=100.0, decimals=4, least_decimals=2),
     *_by_method(),
     computed("yardstick_error", "Yardstick error",
              "What the Yardstick knows of its own error: its unit value is off by no more.",
@@ -206,7 +208,7 @@ SCREEN_COLUMNS: tuple[Column, ...] = tuple(column for column in COLUMNS if colum
 VALUE_TABLE: tuple[str, ...] = (
     "name", "side", "kind", "quantity", "unit", "long_leg", "long_delivery", "long_ratio",
     "short_leg", "short_delivery", "short_ratio", "strike", "expiry", "exercise",
-    "forward_long", "forward_short", "vol_long", "vol_short", "correlation", "years", "discount",
+    "forward_long", "forward_short", "vol_long", "vol_short", "correlation", "years", "discount", "rate",
     *(method.key for method in METHODS), "yardstick_error",
     "method", "position_value",
     *(key for key, *_ in _SENSITIVITIES),

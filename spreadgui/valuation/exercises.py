@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 
 from spreadgui.market.strips import Strip
 from spreadgui.market.time import discount_factor
+from spreadgui.market.zero_rates import ZeroRates
 from spreadgui.pricing.results import Sensitivities
 from spreadgui.valuation.results import output_row
 from spreadgui.valuation.slate import INPUTS, CodeArray, FloatArray, RowArray, Slate
@@ -105,8 +106,8 @@ def expand(slate: Slate, rows: RowArray) -> Exercises:
         return Exercises(inputs, *codes, everyone, np.ones(len(rows)), len(rows))
     counts = np.array([1 if strip is None else len(strip) for strip in strips])
     owner = np.repeat(np.arange(len(rows)), counts)
-    inputs, timing = inputs[:, owner], _Timing.of(strips, counts, slate.book.zero_rate, inputs)
-    for key in ("years", "discount"):
+    inputs, timing = inputs[:, owner], _Timing.of(strips, counts, ZeroRates.of(slate.book), inputs)
+    for key in ("years", "discount", "rate"):
         inputs[_LINE[key]] = np.where(timing.once, inputs[_LINE[key]], getattr(timing, key))
     chain = _with_effective(inputs, timing)
     kind, shape, law = (code[owner] for code in codes)
@@ -129,14 +130,15 @@ class _Timing:
     share: FloatArray
     daily_long: FloatArray
     daily_short: FloatArray
+    rate: FloatArray
 
     @property
     def years(self) -> FloatArray:
         return self.before + self.within
 
     @staticmethod
-    def of(strips: list[Strip | None], counts: RowArray, zero_rate: float, inputs: FloatArray) -> _Timing:
-        lines = np.full((6, int(counts.sum())), np.nan)
+    def of(strips: list[Strip | None], counts: RowArray, rates: ZeroRates, inputs: FloatArray) -> _Timing:
+        lines = np.full((7, int(counts.sum())), np.nan)
         once = np.zeros(lines.shape[1], dtype=np.bool_)
         start = 0
         for place, (strip, count) in enumerate(zip(strips, counts.tolist(), strict=True)):
@@ -146,7 +148,9 @@ class _Timing:
                 part[:4, 0] = inputs[_LINE["years"], place], 0.0, inputs[_LINE["discount"], place], 1.0
             else:
                 part[0], part[1], part[3] = strip.before, strip.within, strip.share
-                part[2] = [discount_factor(zero_rate, years) for years in strip.years.tolist()]
+                times = strip.years.tolist()
+                part[6] = [rates.rate(years) for years in times]
+                part[2] = [discount_factor(rate, years) for rate, years in zip(part[6].tolist(), times, strict=True)]
                 part[4], part[5] = strip.daily_long, strip.daily_short
             start += count
         return _Timing(once, *lines)

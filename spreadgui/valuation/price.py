@@ -62,7 +62,7 @@ def price_rows(slate: Slate, rows: RowArray, executor: Executor | None = None) -
     with np.errstate(all="ignore"):  # what runs over is refused below; a warning would reach nobody but the console
         lines = expand(slate, rows)
         found = lines.gathered(price_lines(slate, lines, executor))
-        found[output_row("theta")] += slate.book.zero_rate * found[output_row("value")]
+        found[output_row("theta")] += found[output_row("carry")]
         imply(slate, rows, found, executor)
     refused = _refuse_unreachable(rows, found)
     for array in (found, rows):
@@ -89,7 +89,10 @@ def _price_group(group: Group, chosen: Method, executor: Executor | None) -> Flo
         _price_normal_spreads(group, outputs, executor)
     else:
         _price_spreads(group, chosen, outputs, executor)
-    outputs[output_row("rate_sensitivity")] = -group["years"] * outputs[output_row("value")]
+    value = outputs[output_row("value")]
+    outputs[output_row("rate_sensitivity")] = -group["years"] * value
+    # The formulas hold the discount factor; as a day passes it moves by the zero rate to the expiry.
+    outputs[output_row("carry")] = group["rate"] * value
     return outputs
 
 

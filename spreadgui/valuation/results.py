@@ -30,6 +30,7 @@ EXTRAS = (
     "daily_vega_long",
     "daily_vega_short",
     "rate_sensitivity",
+    "carry",
     "yardstick_error",
     "implied_correlation",
     "implied_correlation_error",

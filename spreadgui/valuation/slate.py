@@ -20,6 +20,7 @@ from spreadgui.market.many import resolve_many
 from spreadgui.market.quotes import Quotes
 from spreadgui.market.strips import Strip
 from spreadgui.market.touched import all_alike, touches
+from spreadgui.market.zero_rates import ZeroRates
 
 FloatArray = NDArray[np.float64]
 RowArray = NDArray[np.intp]
@@ -40,6 +41,7 @@ INPUTS = (
     "discount",
     "shift_long",
     "shift_short",
+    "rate",
     "quoted_premium",
 )
 _INPUT_ROW = {key: row for row, key in enumerate(INPUTS)}
@@ -97,10 +99,11 @@ def follow(previous: Slate | None, book: Book, revision: int) -> Succession:
     columns = _Columns.taken_over(previous, old_rows)
     quotes = previous.quotes if previous is not None and _same_quotes(previous.book, book) else Quotes.of(book)
     fresh = np.flatnonzero(old_rows == _NOT_KEPT)
-    left = columns.put_many(fresh, book, quotes) if len(fresh) >= MANY else fresh
+    rates = ZeroRates.of(book)
+    left = columns.put_many(fresh, book, quotes, rates) if len(fresh) >= MANY else fresh
     for row in left.tolist():
         position = book.positions[row]
-        columns.put(row, position, resolve(position, quotes, book.valuation_date, book.zero_rate))
+        columns.put(row, position, resolve(position, quotes, book.valuation_date, rates))
     old_rows.setflags(write=False)
     return Succession(columns.slate(revision, book, quotes), old_rows)
 
@@ -176,10 +179,10 @@ class _Columns:
         columns.troubles = {row: told for old, told in previous.troubles.items() for row in new_rows.get(old, ())}
         return columns
 
-    def put_many(self, rows: RowArray, book: Book, quotes: Quotes) -> RowArray:
+    def put_many(self, rows: RowArray, book: Book, quotes: Quotes, rates: ZeroRates) -> RowArray:
         """The positions at `rows` that can be resolved by columns; gives the rows that are left."""
         positions = [book.positions[row] for row in rows.tolist()]
-        many = resolve_many(positions, quotes, book.valuation_date, book.zero_rate)
+        many = resolve_many(positions, quotes, book.valuation_date, rates)
         plain = np.flatnonzero(many.plain)
         chosen, some = rows[plain], [positions[place] for place in plain.tolist()]
         for line, key in enumerate(INPUTS):
@@ -242,6 +245,7 @@ def _inputs_of(position: Position, resolved: ResolvedPosition) -> tuple[float, .
         resolved.discount,
         resolved.shift_long,
         resolved.shift_short,
+        resolved.rate,
         math.nan if position.quoted_premium is None else position.quoted_premium,
     )
 

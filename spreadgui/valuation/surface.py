@@ -238,7 +238,6 @@ class _Subject:
     method: Method
     quantity: Quantity
     lines: Exercises
-    zero_rate: float
     executor: Executor | None
 
     @staticmethod
@@ -251,7 +250,6 @@ class _Subject:
             _method_of(slate, request),
             quantity_of(request.quantity),
             expand(slate, np.array([row])),
-            slate.book.zero_rate,
             executor,
         )
 
@@ -289,7 +287,7 @@ class _Subject:
         arguments = Group(self.kind, Shape.SPREAD, self.law, on).spread_arguments
         if self.kind == "forward":
             legs = (cell["ratio_long"] * long, cell["ratio_short"] * short)
-            return _forward_nodes(cell, self.quantity.key, *legs, self.zero_rate)
+            return _forward_nodes(cell, self.quantity.key, *legs)
         if self.quantity.key == "value":
             return self.method.value(*arguments, kind=self.kind, executor=self.executor)
         found = self.method.sensitivities(*arguments, kind=self.kind, executor=self.executor)
@@ -303,7 +301,7 @@ class _Subject:
         chain, key = self.lines.chain, self.quantity.key
         answer = getattr(found, key) if chain is None else chain.at(line, key, found)
         # A method holds the discount factor; the carry of the premium is the rate's.
-        return np.asarray(answer + (self.zero_rate * found.value if key == "theta" else 0.0))
+        return np.asarray(answer + (cell["rate"] * found.value if key == "theta" else 0.0))
 
 
 def _axis(forward: float, deviation: float, nodes: int) -> FloatArray:
@@ -325,16 +323,14 @@ def _usable(axis: FloatArray, ratio: float, shift: float, either_sign: bool) -> 
     return bool(rising and np.isfinite(folded).all() and (either_sign or (folded > 0).all()))
 
 
-def _forward_nodes(
-    cell: dict[str, float], key: str, long: FloatArray, short: FloatArray, zero_rate: float
-) -> FloatArray:
+def _forward_nodes(cell: dict[str, float], key: str, long: FloatArray, short: FloatArray) -> FloatArray:
     """The difference itself: no method, no volatility, forwards of either sign."""
     value = cell["discount"] * (long - short - cell["strike"])
     slopes = {"delta_long": cell["discount"], "delta_short": -cell["discount"]}
     if key == "value":
         return np.asarray(value)
     if key == "theta":
-        return np.asarray(zero_rate * value)
+        return np.asarray(cell["rate"] * value)
     return np.full(np.shape(value), slopes.get(key, 0.0))
 
 

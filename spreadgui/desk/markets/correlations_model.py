@@ -11,7 +11,7 @@ from spreadgui.book import entries
 from spreadgui.book.changes import set_book, set_market
 from spreadgui.book.entries import EntryError, quoted
 from spreadgui.book.fields import Field
-from spreadgui.book.records import Book, Correlation
+from spreadgui.book.records import Book, Correlation, Market
 from spreadgui.desk.grid.cells import Cell, Look
 from spreadgui.desk.workbench import Workbench
 from spreadgui.valuation.shown import trimmed_text
@@ -113,6 +113,10 @@ class CorrelationsModel(QAbstractTableModel):
         look = Look.ENTRY if pair.standard_error is None else Look.OWN
         return Cell(trimmed_text(100.0 * pair.correlation, 4, 1), look)
 
+    def text_of(self, row: int, column: int) -> str:
+        """What a cell shows."""
+        return self.cell(self.index(row, column)).text
+
     def pair(self, index: Index) -> Correlation | None:
         """The book's entry behind a cell."""
         return self._pairs.get(frozenset((self._names[index.row()], self.columns[index.column()].heading)))
@@ -162,14 +166,12 @@ class CorrelationsModel(QAbstractTableModel):
     def _is_diagonal(self, index: Index) -> bool:
         return index.column() == index.row() + 1
 
-    def _market(self, row: int):  # noqa: ANN202 - a record of the book
+    def _market(self, row: int) -> Market:
         return self._workbench.book.markets[row]
 
     def _set_tie(self, row: int, text: str) -> None:
         market = msgspec.structs.replace(self._market(row), tie_strength=entries.number(text))
-        self._workbench.apply(
-            set_market(self._workbench.book, row, market, f"set the tie strength of {market.name}")
-        )
+        self._workbench.apply(set_market(self._workbench.book, row, market, f"set the tie strength of {market.name}"))
 
     def _set_pair(self, index: Index, text: str) -> None:
         first, second = self._names[index.row()], self.columns[index.column()].heading

@@ -21,10 +21,10 @@ from tests.desk.test_window import agrees_with_its_book, settle, shown
 
 
 def marks_of(window: Window, market: str) -> MarksPane:
-    assert window.marks is not None
-    window.marks.choose(market)
+    assert window.markets is not None
+    window.markets.marks.choose(market)
     window.handlers["go_marks"]()
-    return window.marks
+    return window.markets.marks
 
 
 def go(pane: MarksPane, period: str, key: str) -> None:
@@ -209,10 +209,10 @@ def test_another_law_reprices_and_one_without_a_shift_drops_it(desk: Desk, qtbot
 
 def test_a_book_without_markets_says_what_would_be_here(desk: Desk) -> None:
     window = desk.open(msgspec.structs.replace(book_of(), markets=(), correlations=()))
-    assert window.marks is not None
-    assert window.marks.model.rowCount() == 0
+    assert window.markets is not None
+    assert window.markets.marks.model.rowCount() == 0
     window.workbench.open(book_of(spark()))
-    assert window.marks.model.rowCount() > 0
+    assert window.markets.marks.model.rowCount() > 0
 
 
 def test_the_chart_points_at_the_delivery_of_the_current_row(desk: Desk, demo_book: Book) -> None:
