@@ -121,12 +121,19 @@ def test_correlations_at_odds_for_one_delivery_become_those_of_the_paper() -> No
 
 
 def test_ties_at_odds_bring_only_their_markets_down() -> None:
-    book = book_of([0.9, 0.1, 0.2], [0.1, 2.0, 0.1], MONTHS)
+    book = book_of([0.9, 0.0, 0.0], [0.1, 2.0, 0.1], MONTHS)
     found = mended(book)
     assert [(move.first, move.second) for move in found.moves] == [("Ash", "Birch")]
     assert found.sentence == (f"1 correlation would move, that of Ash and Birch, from 0.9 to {found.moves[0].new:g}")
     more = structs.replace(found.correlations[0], correlation=found.moves[0].new + 3e-4)
     assert not check(with_entries(book, (more, *found.correlations[1:]))).possible
+
+
+def test_ties_at_odds_move_the_correlations_with_others_but_little() -> None:
+    # Two markets brought down to what they just bear leave a third no slack, so its correlations follow a little.
+    found = mended(book_of([0.9, 0.1, 0.2], [0.1, 2.0, 0.1], MONTHS))
+    assert (found.moves[0].first, found.moves[0].second) == ("Ash", "Birch")
+    assert all(0.9 * move.old < move.new < move.old for move in found.moves[1:])
 
 
 def test_no_tie_beside_one_leaves_no_correlation_and_leaves_the_others_alone() -> None:
@@ -160,19 +167,15 @@ def test_entries_out_of_the_matter_are_left_alone() -> None:
     assert found.correlations[-3:] == others
 
 
-def test_decimals_of_the_book_stay_where_nothing_moves_to_speak_of() -> None:
-    book = book_of([1.0, 0.0, 0.01234567, 1.0, 0.0, 0.0])
-    # Elm stands by itself but for a correlation too small to be moved by half a unit.
+def test_a_market_apart_keeps_its_correlations_to_the_last_decimal() -> None:
+    book = book_of([1.0, 0.0, 0.0, 0.0, 1.0, 0.0, 0.0, 0.0, 0.0, 0.01234567])  # Elm and Fir by themselves
     found = mended(book)
-    assert (
-        found.correlations[2] is book.correlations[2] or abs(found.correlations[2].correlation - 0.01234567) > HALF_UNIT
-    )
-    apart = mended(book_of([1.0, 0.0, 0.0, 1.0, 0.0, 0.0]))
-    assert [(move.first, move.second) for move in apart.moves] == [
+    assert [(move.first, move.second) for move in found.moves] == [
         ("Ash", "Birch"),
         ("Ash", "Cedar"),
         ("Birch", "Cedar"),
     ]
+    assert found.correlations[-1] is book.correlations[-1]
 
 
 def test_a_correlation_beyond_one_comes_back_within() -> None:
@@ -199,5 +202,5 @@ def test_a_floor_out_of_range_is_refused_by_name(floor: float) -> None:
 
 
 def test_rounds_below_zero_are_refused_by_name() -> None:
-    with pytest.raises(ValueError, match="^rounds: expected zero or more, found -1"):
+    with pytest.raises(ValueError, match=r"^rounds: expected zero or more, found -1"):
         mended(book_of([0.5]), rounds=-1)

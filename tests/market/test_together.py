@@ -29,7 +29,7 @@ MONTHS = ("2027-01", "2027-02", "2027-07")
 def book_of(
     between: Matrix, ties: Iterable[float] = (), months: Iterable[str] = MONTHS[:1], gaps: Iterable[str] = ()
 ) -> Book:
-    """Markets with these correlations and a position on each delivery of each, without the pairs in `gaps`: "Ash Elm"."""
+    """Markets with these correlations and a position on each delivery of each; `gaps` ("Ash Elm") are left out."""
     count, strengths = len(between), [*ties, *[0.0] * len(between)]
     pairs = [pair for pair in itertools.combinations(range(count), 2) if np.isfinite(between[pair])]
     return Book(
