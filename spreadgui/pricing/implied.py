@@ -121,7 +121,8 @@ def _start(quotes: Quotes, method: str, executor: Executor | None) -> Array:
     elif method == "bachelier":
         total = _deviations(quotes.target, quotes.moneyness()) / np.sqrt(quotes.expiry)
         gap = np.abs(quotes.vol_first - quotes.vol_second)
-        start = np.clip(1.0 - (total - gap) / quotes.vol_first * ((total + gap) / quotes.vol_second) / 2.0, -1.0, 1.0)
+        there = 1.0 - (total - gap) / quotes.vol_first * ((total + gap) / quotes.vol_second) / 2.0
+        start = np.where(np.isnan(there), start, np.clip(there, -1.0, 1.0))
     return start
 
 
@@ -222,8 +223,10 @@ def correlation_with_error(
         margrabe.check_strike(columns)
     quotes, shape = turned(premium, columns, kind, tolerance, method)
     telling = (quotes.expiry > 0.0) & (quotes.discount > 0.0) & (quotes.vol_first > 0.0) & (quotes.vol_second > 0.0)
-    telling &= kind != "forward"
-    found = _solve(quotes.only(telling), method, executor)
+    telling &= np.isfinite(quotes.target) & (kind != "forward")
+    # Amounts at the far ends of what is taken at all run over on the way; the status says what that leaves.
+    with np.errstate(all="ignore"):
+        found = _solve(quotes.only(telling), method, executor)
     return ImpliedCorrelation(
         _placed(found.correlation, telling, np.nan, shape),
         _placed(found.status, telling, Status.NOT_IDENTIFIED, shape),
@@ -300,7 +303,7 @@ def spread_volatility_with_error(
     check_kind(kind)
     columns, _ = bachelier.normal_columns(forward_long, forward_short, strike, 0.0, 0.0, 0.0, expiry, discount)
     quotes, shape = turned(premium, columns, kind, tolerance, None)
-    telling = (quotes.expiry > 0.0) & (quotes.discount > 0.0) & (kind != "forward")
+    telling = (quotes.expiry > 0.0) & (quotes.discount > 0.0) & np.isfinite(quotes.target) & (kind != "forward")
     with np.errstate(all="ignore"):
         allowed, root_time = quotes.tolerance / quotes.discount, np.sqrt(quotes.expiry)
         moneyness = quotes.moneyness()
@@ -308,8 +311,9 @@ def spread_volatility_with_error(
             _deviations(quotes.target + move, moneyness) / root_time for move in (0.0, -allowed, allowed)
         )
         bar = np.maximum(high - middle, middle - low)
+    telling &= np.isfinite(middle) & np.isfinite(bar)
     below = telling & (quotes.target <= -allowed)
-    vague = ~telling | (bar >= middle)
+    vague = ~(telling & (bar < middle))
     status = np.select([below, vague], [Status.BELOW_FLOOR, Status.NOT_IDENTIFIED], Status.SOLVED).astype(_WORDS)
     volatility = np.where(telling & ~below, middle, np.nan)
     error_bar = np.where(telling, np.where(below, np.nan, bar), np.inf)

@@ -72,14 +72,15 @@ def ordinary_box(draw: np.random.Generator, count: int) -> Options:
     return Options(long, short, strike, long_vol, short_vol, correlation)
 
 
-def corner_box(draw: np.random.Generator, count: int) -> Options:
-    """The hard box with correlations between 1e-4 and 1e-15 away from one or minus one."""
+def corner_box(draw: np.random.Generator, count: int, wider: float = 1.0) -> Options:
+    """The hard box with correlations 1e-4 to 1e-15 away from one or minus one, its deviations times `wider`."""
     away = draw.choice([-1.0, 1.0], count) * (1.0 - 10.0 ** draw.uniform(-15.0, -4.0, count))
     options = hard_box(draw, count)
-    one, other = options.vol_long, options.vol_short
+    one, other = wider * options.vol_long, wider * options.vol_short
     spread = np.sqrt((one - other) ** 2 + 2.0 * one * other * (1.0 - away))
     money = np.where(options.forward_short + options.strike > 1.0, options.forward_short + options.strike, 100.0)
-    return options._replace(correlation=away, forward_long=money * np.exp(draw.uniform(-4.0, 4.0, count) * spread))
+    long = money * np.exp(draw.uniform(-4.0, 4.0, count) * spread)
+    return options._replace(forward_long=long, vol_long=one, vol_short=other, correlation=away)
 
 
 def panel_ends(f1: float, f2: float, k: float, a: float, b: float, r: float) -> Array:
@@ -326,6 +327,7 @@ def main() -> None:
     closed_form_figures(ordinary_box(draw, 200_000))
     # Each with draws of its own, so that a change to one leaves the others' figures as they are quoted.
     yardstick_figures("next to full correlation", corner_box(np.random.default_rng(1), count // 2))
+    yardstick_figures("there with deviations 0.02..10", corner_box(np.random.default_rng(7), count // 2, 4.0))
     shifted_figures(np.random.default_rng(2), 100_000)
     margrabe_figures(hard_box(np.random.default_rng(3), count // 4))
     black_figures(np.random.default_rng(4), count // 2)

@@ -151,6 +151,42 @@ def test_shapes_broadcast_and_empty_ones_stay_empty() -> None:
     assert implied.correlation([], **MARKET)[0].shape == (0,)
 
 
+@pytest.mark.parametrize("kind", ["call", "put", "forward"])
+@pytest.mark.parametrize("tolerance", [None, 0.0, 0.01, 1e60])
+@pytest.mark.parametrize("method", [*implied.METHODS, None])
+def test_whatever_is_taken_has_a_status_that_holds_and_gives_no_warning(
+    method: str | None, tolerance: float | None, kind: str
+) -> None:
+    """The far ends of every range, thrown together, and one quote like any other as the last: NumPy's warnings are
+    errors in this suite. None stands for the spread volatility."""
+    draw = np.random.default_rng(11)
+
+    def some(*ends: float, last: float) -> np.ndarray:
+        return np.append(draw.choice(ends, 1500), last)
+
+    premiums = some(-1e60, -5.0, 0.0, 1e-300, 1e-9, 5.0, 1e60, last=8.0)
+    amounts = [some(1e-60, 1e-9, 100.0, 1e60, last=last) for last in (100.0, 96.0)]
+    strikes = some(-1e60, -100.0, 0.0, 50.0, 1e60, last=0.0) * (method != "margrabe")
+    unit = 100.0 if method == "bachelier" else 1.0
+    vols = [unit * some(0.0, 1e-300, 1e-9, 0.3, 5.0, 1e6, last=last) for last in (0.3, 0.25)]
+    times = [some(0.0, 1e-300, 1.0, 1e6, last=1.0) for _ in range(2)]
+    if method is None:
+        found = implied.spread_volatility_with_error(
+            premiums, *amounts, strikes, *times, kind=kind, tolerance=tolerance
+        )
+    else:
+        found = implied.correlation_with_error(
+            premiums, *amounts, strikes, *vols, *times, kind=kind, tolerance=tolerance, method=method
+        )
+    solved = found.status == Status.SOLVED
+    assert solved[-1] or kind == "forward" or tolerance == 1e60
+    assert np.isfinite(found[0][solved]).all()
+    assert np.isfinite(found.error_bar[solved]).all()
+    assert np.isnan(found[0][np.isin(found.status, [Status.BELOW_FLOOR, Status.ABOVE_CEILING])]).all()
+    assert not np.isinf(found[0]).any()
+    assert not np.isnan(found.error_bar[found.status == Status.NOT_IDENTIFIED]).any()
+
+
 @settings(deadline=None, max_examples=80)
 @given(
     st.floats(-50, 150), st.floats(-50, 150), st.floats(-60, 60), st.floats(1.0, 80.0), st.floats(0.05, 3.0),

@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from spreadgui.pricing import margrabe, methods, yardstick
+from spreadgui.pricing import black76, margrabe, methods, yardstick
 
 ALL = methods.LOGNORMAL_METHODS
 ANY_STRIKE = [method for method in ALL if method.accepts(1.0)]
@@ -129,6 +129,36 @@ def test_the_bjerksund_stensland_rule_is_worth_no_more_than_the_best(option: tup
     rule = methods.method("bjerksund_stensland").value(*option)
     best, error = yardstick.estimate(*option)
     assert rule <= best + error + 1e-13 * size(option)
+
+
+@given(
+    forward=st.floats(1.0, 500.0),
+    moneyness=st.floats(-2.0, 5.0),
+    deviation=st.floats(0.0, 2.5),
+    expiry=st.floats(0.02, 3.0),
+    discount=st.floats(0.0, 1.2),
+)
+@settings(max_examples=100, deadline=None)
+def test_an_option_on_one_forward_keeps_parity_bounds_and_shape(
+    forward: float, moneyness: float, deviation: float, expiry: float, discount: float
+) -> None:
+    strike, vol = forward * moneyness, deviation / expiry**0.5
+    room = 1e-14 * (forward + abs(strike))
+    with np.errstate(all="raise"):
+        call, put, sure = (
+            black76.value(forward, strike, vol, expiry, discount, kind=kind) for kind in ("call", "put", "forward")
+        )
+    assert abs(call - put - sure) <= room
+    assert max(float(sure), 0.0) - room <= call <= discount * (forward + max(-strike, 0.0)) + room
+    assert max(-float(sure), 0.0) - room <= put <= discount * max(strike, 0.0) + room
+    strikes = forward * np.linspace(-1.0, 3.0, 81)
+    by_strike = black76.value(forward, strikes, vol, expiry)
+    assert np.all(np.diff(by_strike) <= room)
+    assert np.all(np.diff(by_strike, 2) >= -4e-14 * forward)
+    assert np.all(np.diff(black76.value(forward, strike, np.linspace(0.0, 3.0, 41), expiry)) >= -room)
+    assert np.all(np.diff(black76.value(forward, strike, vol, np.linspace(0.0, 3.0, 41))) >= -room)
+    grown = black76.value(1.7 * forward, 1.7 * strike, vol, expiry, discount)
+    assert abs(grown - 1.7 * call) <= 4.0 * room
 
 
 def test_the_table_of_methods_is_in_order_and_names_one_reference() -> None:

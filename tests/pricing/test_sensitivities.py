@@ -366,3 +366,39 @@ def test_the_modified_kirk_skew_is_the_true_one_at_the_money() -> None:
         ]
         gaps[key] = abs(gap[1] - gap[0])
     assert gaps["modified_kirk"] < 0.1 * gaps["kirk"]
+
+
+@pytest.mark.parametrize(
+    ("f2", "k", "s1", "s2", "r"),
+    [(100.0, 25.0, 0.35, 0.45, 0.5), (40.0, 30.0, 0.2, 0.6, -0.4), (80.0, 8.0, 0.5, 0.3, 0.9)],
+)
+def test_the_modified_kirk_slope_is_what_the_true_implied_volatility_tends_to(
+    f2: float, k: float, s1: float, s2: float, r: float
+) -> None:
+    """A second way to the correction of Alos and Leon (2016): no formula for the slope, but the true price, a sum at 50
+    digits, turned into the volatility that Black's formula needs for it; differenced in ln F1 at the money; and taken
+    to no time at all by Richardson's rule over expiries of a day and a quarter of one."""
+    lump, slopes = mp.mpf(f2) + mp.mpf(k), []
+    with mp.workdps(50):
+        for days in (mp.mpf(1), mp.mpf(1) / 4):
+            time, ends = days / 365, []
+            for side in (1, -1):
+                f1 = lump * mp.exp(side * mp.sqrt(time) / 1000)
+                price = integral_call(f1, mp.mpf(f2), mp.mpf(k), mp.mpf(s1), mp.mpf(s2), mp.mpf(r), time)
+
+                def gap(vol, f1=f1, price=price, time=time):  # type: ignore[no-untyped-def]  # mpmath has no types
+                    return ratio(f1, lump, vol * mp.sqrt(time)) - price
+
+                ends.append(mp.findroot(gap, (mp.mpf("0.3"), mp.mpf("0.31"))))
+            slopes.append((ends[0] - ends[1]) / (2 * mp.sqrt(time) / 1000))
+        limit = (4 * slopes[1] - slopes[0]) / 3
+    # The formula's own slope, from two of its values near the money where its volatility is Kirk's.
+    step, time = 1e-4, 1.0
+    implied = []
+    for side in (step, -step):
+        f1 = float(lump) * np.exp(side)
+        price = float(methods.method("modified_kirk").value(f1, f2, k, s1, s2, r, time))
+        vol = mp.findroot(lambda v, f1=f1, price=price: ratio(mp.mpf(f1), lump, v) - price, (0.3, 0.31), tol=1e-25)
+        implied.append(float(vol))
+    found = (implied[0] - implied[1]) / (2.0 * step)
+    assert found == pytest.approx(float(limit), rel=1e-6)
