@@ -21,7 +21,13 @@ _HIGHEST_VOLATILITY = 10.0
 
 def faults_of(book: Book) -> list[Fault]:
     """The faults of `book` in the order of its file: its own, of markets, correlations, then positions."""
-    return [*_book_faults(book), *_market_faults(book), *_correlation_faults(book), *_position_faults(book)]
+    return [
+        *_book_faults(book),
+        *_market_faults(book),
+        *_blend_faults(book),
+        *_correlation_faults(book),
+        *_position_faults(book),
+    ]
 
 
 def _book_faults(book: Book) -> Iterator[Fault]:
@@ -45,7 +51,7 @@ def _market_faults(book: Book) -> Iterator[Fault]:
             yield Fault(f"{where}.name", "a market needs a name")
         elif names[market.name] > 1:
             yield Fault(f"{where}.name", f"the market {quoted(market.name)} is defined {names[market.name]} times")
-        yield from _unit_faults(market, book.currency, where)
+        yield from _unit_faults(market.unit, book.currency, where)
         if not 0 <= market.tie_strength < math.inf:
             yield Fault(f"{where}.tie_strength", f"is {market.tie_strength:g}; it cannot be below zero")
         yield from _law_faults(market, where)
@@ -78,11 +84,11 @@ def _mark_faults(market: Market, where: str) -> Iterator[Fault]:
         yield from _volatility_faults(mark.daily_volatility, f"{place}.daily_volatility", highest)
 
 
-def _unit_faults(market: Market, currency: str, where: str) -> Iterator[Fault]:
+def _unit_faults(unit: str, currency: str, where: str) -> Iterator[Fault]:
     """Values of all markets are added up, so all must be quoted in the book's money."""
-    money, slash, counted_by = market.unit.partition("/")
+    money, slash, counted_by = unit.partition("/")
     if not (money.strip() and slash and counted_by.strip()):
-        yield Fault(f"{where}.unit", f"expected money for a quantity, as CRN/MWh, got {quoted(market.unit)}")
+        yield Fault(f"{where}.unit", f"expected money for a quantity, as CRN/MWh, got {quoted(unit)}")
     elif money.strip() != currency:
         yield Fault(
             f"{where}.unit",
@@ -97,6 +103,25 @@ def _volatility_faults(volatility: float | None, where: str, highest: float = _H
         yield Fault(where, f"is {volatility:g}; it cannot be below zero")
     elif volatility > highest:
         yield Fault(where, f"is {volatility:g}, which is {100 * volatility:g} %; a volatility of 45 % is written 0.45")
+
+
+def _blend_faults(book: Book) -> Iterator[Fault]:
+    names = Counter([*(market.name for market in book.markets), *(blend.name for blend in book.blends)])
+    known = {market.name for market in book.markets}
+    for index, blend in enumerate(book.blends):
+        where = f"blends[{index}]"
+        if not blend.name.strip():
+            yield Fault(f"{where}.name", "a blend needs a name")
+        elif names[blend.name] > 1:
+            yield Fault(f"{where}.name", f"{quoted(blend.name)} is the name of {names[blend.name]} markets or blends")
+        yield from _unit_faults(blend.unit, book.currency, where)
+        if not blend.parts:
+            yield Fault(f"{where}.parts", f"the blend {quoted(blend.name)} has no parts")
+        for place, part in enumerate(blend.parts):
+            if part.market not in known:
+                yield Fault(f"{where}.parts[{place}].market", f"there is no market {quoted(part.market)} in this book")
+            if not part.weight > 0.0:
+                yield Fault(f"{where}.parts[{place}].weight", f"is {part.weight:g}; a weight is above zero")
 
 
 def _correlation_faults(book: Book) -> Iterator[Fault]:

@@ -11,6 +11,7 @@ import numpy as np
 
 from spreadgui.book.entries import is_delivery
 from spreadgui.book.records import Market, Position
+from spreadgui.market.blends import horizon, names_a_blend, with_blends
 from spreadgui.market.quotes import Quotes, UnknownMarkError
 from spreadgui.market.strips import Strip, calendar_fault, exercises, strip_of
 from spreadgui.market.time import discount_factor, years
@@ -83,6 +84,8 @@ def resolve(
     """The inputs of `position`, with everything that stands in the way of pricing it listed in the order of the row."""
     rates = zero_rates if isinstance(zero_rates, ZeroRates) else ZeroRates(zero_rates)
     resolved = ResolvedPosition(shape=_shape(position))
+    if names_a_blend(position, quotes):
+        quotes = with_blends(quotes, position, horizon(position, valuation_date))
     if position.quantity is None:
         _incomplete(resolved, "quantity", "the quantity is missing")
     _resolve_leg(resolved, position, quotes, "long")

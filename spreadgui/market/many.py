@@ -124,7 +124,10 @@ class _Legs:
 
 
 def _marked(quotes: Quotes, leg: str, delivery: str) -> tuple[float, float, float, float, str]:
-    """Forward, volatility, shift, law and unit of a contract; NaN where the book has no one mark of it."""
+    """Forward, volatility, shift, law and unit of a contract; NaN where the book has no one mark of it.
+
+    A blend's depend on the position, so it has none here.
+    """
     try:
         market, mark = quotes.market(leg), quotes.mark(leg, delivery)
     except UnknownMarkError:

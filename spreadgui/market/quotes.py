@@ -4,11 +4,15 @@ from __future__ import annotations
 
 import math
 from collections import Counter
-from dataclasses import dataclass
+from collections.abc import Mapping
+from dataclasses import dataclass, field
 
 from spreadgui.book.entries import is_delivery, quoted, shown
-from spreadgui.book.records import Book, Mark, Market
+from spreadgui.book.records import Blend, Book, Mark, Market
 from spreadgui.market.time import delivery_years_apart
+
+Contract = tuple[str, str]
+"""A market or blend, and a delivery month."""
 
 
 class UnknownMarkError(LookupError):
@@ -29,26 +33,41 @@ class Quotes:
     _twice: frozenset[str]
     _marks_twice: frozenset[tuple[str, str]]
     _pairs_twice: frozenset[frozenset[str]]
+    _blends: Mapping[str, Blend] = field(default_factory=dict)
+    # What blends have been matched to (market.blends), and why some could not be.
+    _broken: Mapping[str, UnknownMarkError] = field(default_factory=dict)
+    _ties: Mapping[tuple[Contract, Contract], float] = field(default_factory=dict)
 
     @staticmethod
     def of(book: Book) -> Quotes:
         """The index over the marks of `book`."""
-        names = Counter(market.name for market in book.markets)
+        blends = {blend.name: blend for blend in book.blends}
+        names = Counter([*(market.name for market in book.markets), *(blend.name for blend in book.blends)])
         contracts = Counter((market.name, mark.delivery) for market in book.markets for mark in market.marks)
         pairs = Counter(frozenset((pair.first, pair.second)) for pair in book.correlations)
         return Quotes(
-            {market.name: market for market in book.markets},
+            {
+                **{blend.name: Market(blend.name, blend.unit, note=blend.note) for blend in book.blends},
+                **{market.name: market for market in book.markets},
+            },
             {market.name: {mark.delivery: mark for mark in market.marks} for market in book.markets},
             {frozenset((pair.first, pair.second)): pair.correlation for pair in book.correlations},
             frozenset(name for name, count in names.items() if count > 1),
             frozenset(contract for contract, count in contracts.items() if count > 1),
             frozenset(pair for pair, count in pairs.items() if count > 1),
+            blends,
         )
+
+    def blend(self, name: str) -> Blend | None:
+        """The blend called `name`, or None where that is a market or nothing."""
+        return None if name in self._twice else self._blends.get(name)
 
     def market(self, name: str) -> Market:
         """The market called `name`; raises UnknownMarkError with the reason where there is not exactly one."""
         if name in self._twice:
             raise UnknownMarkError(f"the market {quoted(name)} is defined twice")
+        if name in self._broken:
+            raise self._broken[name]
         try:
             return self._markets[name]
         except KeyError:
@@ -75,6 +94,9 @@ class Quotes:
         deliveries apart times exp(-(mean of the two tie strengths) * years apart). Raises UnknownMarkError where the
         book holds not exactly one correlation of the two markets, or a tie strength below zero.
         """
+        tie_of_blends = self._ties.get(((first, first_delivery), (second, second_delivery)))
+        if tie_of_blends is not None:
+            return tie_of_blends
         for delivery in (first_delivery, second_delivery):
             if delivery and not is_delivery(delivery):
                 raise UnknownMarkError(f"expected a delivery month written as 2027-01, got {quoted(delivery)}")

@@ -135,4 +135,4 @@ def test_any_mix_has_a_volatility_between_nothing_and_its_most_volatile_part(
     inside = np.full((len(parts), len(parts)), tie)
     np.fill_diagonal(inside, 1.0)
     vol = vol_of(some, inside, years, normal=False)
-    assert 0.0 <= vol <= max(part[3] for part in parts) * (1.0 + 1e-9) + 1e-7
+    assert 0.0 <= vol <= max(part[3] for part in parts) * (1.0 + 1e-9) + 1e-6  # the root of rounding

@@ -11,6 +11,7 @@ from spreadgui.book.changes import counted, set_fields
 from spreadgui.book.entries import EntryError, Value
 from spreadgui.desk.grid.cells import Cell, CellCache, Look
 from spreadgui.desk.workbench import Workbench
+from spreadgui.market.blends import deliveries_of, names_of_legs
 from spreadgui.valuation.column import Column
 from spreadgui.valuation.columns import SCREEN_COLUMNS
 from spreadgui.valuation.results import State
@@ -135,10 +136,10 @@ class GridModel(QAbstractTableModel):
         column = self.columns[index.column()]
         book = self._workbench.book
         if column.key in ("long_leg", "short_leg"):
-            return ("", *(market.name for market in book.markets))
+            return ("", *names_of_legs(book))
         if column.key in ("long_delivery", "short_delivery"):
             leg = getattr(book.positions[index.row()], f"{column.key.removesuffix('_delivery')}_leg")
-            return tuple(mark.delivery for market in book.markets if market.name == leg for mark in market.marks)
+            return deliveries_of(book, leg)
         return column.field.entry.choices if column.field is not None else ()
 
     def refusal(self, index: Index, text: str) -> str:
@@ -148,7 +149,7 @@ class GridModel(QAbstractTableModel):
             value = read_typed(column, text, self._scale(column, index.row()))
         except EntryError as error:
             return str(error)
-        markets = {market.name for market in self._workbench.book.markets}
+        markets = names_of_legs(self._workbench.book)
         if column.key in ("long_leg", "short_leg") and value and value not in markets:
             return f'there is no market "{value}" in this book'
         return ""
