@@ -4,11 +4,11 @@ While the check fails, the set of markets with the least eigenvalue is mended, i
 
 - Where the markets' own matrix (one delivery) is none that can be, it gives way to the nearest that can, by Higham's
   method (`market.nearest`).
-- Where it is one, the tie strengths are at odds with the correlations, and the offenders' correlations come down by the
-  same share, to the largest multiple of 1e-4 at which their contracts can exist together. Being positive semi-definite
-  does not carry over from markets to contracts (`market.tied`), while contracts of markets with no correlation always
-  can be. This is one way of many and not the nearest; where tie strengths are far apart, or one of them zero, to bring
-  those closer is the better mend, and it is the desk's to choose.
+- Where it is one, the tie strengths are at odds with the correlations, and those of the markets at odds (of whom none
+  can be spared) come down by the same share, to the largest multiple of 1e-4 at which their contracts can exist
+  together. Being positive semi-definite does not carry over from markets to contracts (`market.tied`), while contracts
+  of markets with no correlation always can be. This is one way of many and not the nearest; where tie strengths are far
+  apart, or one of them zero, to bring those closer is the better mend, and it is the desk's to choose.
 
 New correlations have four decimals, as a person would write them. What rounding may take from an eigenvalue of n
 markets, at most (n − 1) half units of the last decimal, is given beforehand by the floor. An entry that would move by
@@ -25,7 +25,7 @@ from spreadgui.book.entries import shown
 from spreadgui.book.records import Book, Correlation
 from spreadgui.market.nearest import nearest_correlation
 from spreadgui.market.tied import FloatArray, Members, Tied, contracts_in_use, largest_share
-from spreadgui.market.together import Together, check_tied, complete_sets
+from spreadgui.market.together import Together, check_tied, complete_sets, without_the_spare
 
 DECIMALS = 4
 _HALF_UNIT = 0.5 * 10.0**-DECIMALS
@@ -67,7 +67,7 @@ class Mend:
         )
 
 
-def mended(book: Book, *, smallest_eigenvalue: float = 0.0, rounds: int = 50) -> Mend:
+def mended(book: Book, *, smallest_eigenvalue: float = 0.0, rounds: int = 30) -> Mend:
     """The change to offer for `book`, after which `together.check` passes; none where it passes already.
 
     `smallest_eigenvalue`, from 0 to 0.5, is the least that the markets' own matrix shall have where Higham's method is
@@ -108,19 +108,19 @@ def mended(book: Book, *, smallest_eigenvalue: float = 0.0, rounds: int = 50) ->
 def _possible(given: Tied, smallest_eigenvalue: float, rounds: int) -> Tied:
     """`given` with correlations that can exist together; at the latest they do where all are zero."""
     tied = given.with_between(np.clip(given.between, -1.0, 1.0))
+    sets = complete_sets(tied)
     for _ in range(rounds):
-        found = check_tied(tied)
-        if found.possible:
+        worst = min(sets, key=tied.eigenvalue)
+        if tied.holds(worst):
             return tied
-        tied = _step(tied, given, found, smallest_eigenvalue)
+        tied = _step(tied, given, worst, smallest_eigenvalue)
     return _down(tied, tuple(range(len(tied.markets))))
 
 
-def _step(tied: Tied, given: Tied, found: Together, smallest_eigenvalue: float) -> Tied:
-    worst = min(complete_sets(tied), key=tied.eigenvalue)
+def _step(tied: Tied, given: Tied, worst: Members, smallest_eigenvalue: float) -> Tied:
     cells = np.ix_(worst, worst)
     if float(np.linalg.eigvalsh(tied.between[cells])[0]) >= -tied.tolerance:
-        return _down(tied, tuple(tied.markets.index(name) for name in found.offenders))
+        return _down(tied, without_the_spare(tied, worst))
     floor = smallest_eigenvalue + len(worst) * _HALF_UNIT
     nearest = nearest_correlation(tied.between[cells], smallest_eigenvalue=floor).matrix
     between = tied.between.copy()

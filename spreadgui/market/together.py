@@ -123,7 +123,7 @@ def complete_sets(tied: Tied) -> list[Members]:
 
 def offending(tied: Tied, members: Members) -> Members:
     """The fewest of `members`, which cannot exist together, that cannot already, as told in `check`."""
-    spare = _without_the_spare(tied, members)
+    spare = without_the_spare(tied, members)
     for size in range(2, min(len(spare), LARGEST_SET_SEARCHED + 1)):
         if math.comb(len(members), size) > _MOST_SETS_SEARCHED:
             break
@@ -133,7 +133,9 @@ def offending(tied: Tied, members: Members) -> Members:
     return spare
 
 
-def _without_the_spare(tied: Tied, members: Members) -> Members:
+def without_the_spare(tied: Tied, members: Members) -> Members:
+    """Of `members`, which cannot exist together, some of whom none can be spared for that; found by leaving out one
+    after another, those first that weigh least in the eigenvector."""
     _, vectors = np.linalg.eigh(tied.matrix(members))
     owner = tied.owner[np.isin(tied.owner, members)]
     weight = {place: float(np.sum(vectors[owner == place, 0] ** 2)) for place in members}
