@@ -18,10 +18,9 @@ Correlations Four causes move the nine markets: fuel, weather, oil and heavy ind
              of its variance each cause explains, the rest is its own. The correlation of two markets is the dot
              product of their loadings, so the matrix of all of them cannot have a negative eigenvalue, but for the
              rounding to two decimals.
-Mixed legs   Gas plus allowance, or two barrels of motor spirit and one of gasoil, stand in a row as own marks: the
-             mix is taken as lognormal with the first two moments of the true mix, and with its true covariance with
-             the other leg (the moments of a sum of lognormals are exact; E. Levy, "Pricing European average rate
-             currency options", Journal of International Money and Finance 11, 1992, matches them this way).
+Blends       Gas plus allowance as a plant burns them, and two barrels of motor spirit with one of gasoil, stand as one
+             leg each.
+Zero curve   A few points that rise gently.
 
 Ardenmoor has no clock change, so a month of power has 24 hours a day throughout. It rests on weekends and on three days
 around midwinter.
@@ -37,7 +36,7 @@ from collections.abc import Iterator, Mapping
 from pathlib import Path
 from typing import Any, NamedTuple
 
-from spreadgui.book.records import Book, Correlation, Mark, Market, Position
+from spreadgui.book.records import Blend, Book, Correlation, LotRule, Mark, Market, Part, Position, ZeroPoint
 from spreadgui.book.writing import write_book
 
 TARGET = Path(__file__).with_name("ardenmoor_winter.json")
@@ -51,6 +50,20 @@ NORTH, SOUTH, QUILL = "Ardenmoor North", "Ardenmoor South", "Quill Island"
 GAS, COAL, ALLOWANCE = "Pellan gas point", "Storrow coal", "Ardenmoor allowance"
 CRUDE, SPIRIT, GASOIL = "Marrowgate crude", "Marrowgate motor spirit", "Marrowgate gasoil"
 
+PRODUCTS = "Products 2:1"
+# GJ of gas for a MWh of power.
+HEAT_RATES: Mapping[str, float] = {"Quay 3": 7.1, "Loomgate": 9.4}
+ZERO_CURVE: tuple[tuple[datetime.date, float], ...] = (
+    (datetime.date(2027, 3, 1), 0.0295),
+    (datetime.date(2027, 6, 1), 0.0305),
+    (datetime.date(2027, 12, 1), 0.032),
+    (datetime.date(2028, 12, 1), 0.0335),
+)
+# What a lot is: its size, and whether that is for the month, for each hour or for each day of it.
+LOTS: Mapping[str, tuple[float, LotRule]] = {
+    "CRN/MWh": (1.0, "per hour"), "CRN/GJ": (1_000.0, "per day"), "CRN/t": (1_000.0, "fixed"),
+    "CRN/t CO2": (1_000.0, "fixed"), "CRN/bbl": (1_000.0, "fixed"),
+}  # fmt: skip
 NORTH_NIGHTS, QUILL_NIGHTS = "Ardenmoor North nights", "Quill Island nights"
 # What makes the forwards lognormal, CRN/MWh, and how many times the nearest volatility a single day has.
 SHIFTS: Mapping[str, float] = {NORTH: 20.0, QUILL: 15.0}
@@ -200,21 +213,6 @@ def month_days(delivery: str) -> int:
     return calendar.monthrange(int(delivery[:4]), int(delivery[5:]))[1]
 
 
-def mix_marks(mix: Mapping[str, float], delivery: str, other: str, expiry: datetime.date) -> tuple[float, float, float]:
-    """Forward, volatility and correlation with the market `other` of a mix, by its first two moments at the expiry."""
-    time = (expiry - VALUATION_DATE).days / 365.0
-    parts = [(weight * forward(one, delivery), volatility(one, delivery), one) for one, weight in mix.items()]
-    mean = sum(value for value, _, _ in parts)
-    second_moment = sum(
-        value * value_b * math.exp(correlation(one, one_b) * vol * vol_b * time)
-        for (value, vol, one), (value_b, vol_b, one_b) in itertools.product(parts, parts)
-    )
-    mix_vol = math.sqrt(math.log(second_moment / mean**2) / time)
-    other_vol = volatility(other, delivery)
-    joint = sum(value * math.exp(correlation(one, other) * vol * other_vol * time) for value, vol, one in parts)
-    return round(mean, 4), round(mix_vol, 4), round(math.log(joint / mean) / (mix_vol * other_vol * time), 4)
-
-
 def spread(
     name: str, quantity: float, long: tuple[str, str], short: tuple[str, str], strike: float, **rest: Any
 ) -> Position:
@@ -252,17 +250,9 @@ def spark(plant: str, megawatts: float, heat_rate: float, vom: float, delivery: 
 
 
 def clean_spark(plant: str, megawatts: float, heat_rate: float, vom: float, delivery: str, **rest: Any) -> Position:
-    """A gas plant's month against gas and allowances: the short leg is empty and the mix stands as own marks."""
-    mix = {GAS: heat_rate, ALLOWANCE: round(heat_rate * GAS_CARBON, 3)}
-    expiry = business_days_before(delivery, 3)
-    mean, vol, tie = mix_marks(mix, delivery, SOUTH, expiry)
-    own = {"own_forward_short": mean, "own_vol_short": vol, "own_correlation": tie}
-    note = (
-        f"Short leg: {mix[GAS]:g} GJ of gas and {mix[ALLOWANCE]:g} t of allowance a MWh, both at their {delivery} "
-        "marks; volatility and correlation match the mix's first two moments and its covariance with South."
-    )
+    """A gas plant's month against the blend of gas and allowances that it burns."""
     name, quantity = f"{plant} clean {month_words(delivery)}", power_hours(megawatts, delivery)
-    return outright(name, quantity, (SOUTH, delivery), vom, note=note, **own, **rest)
+    return spread(name, quantity, (SOUTH, delivery), (f"{plant} fuel", delivery), vom, **rest)
 
 
 def cable(
@@ -303,24 +293,8 @@ def crack(name: str, barrels: float, product: str, strike: float, delivery: str,
 def three_two_one(barrels: float, strike: float, delivery: str, **rest: Any) -> Position:
     """Three barrels of crude into two of motor spirit and one of gasoil, a barrel of crude at a time."""
     expiry = business_days_before(delivery, 5)
-    mean, vol, tie = mix_marks({SPIRIT: 2.0 / 3.0, GASOIL: 1.0 / 3.0}, delivery, CRUDE, expiry)
-    note = (
-        f"Long leg: two thirds of motor spirit and one third of gasoil, both at their {delivery} marks; volatility and "
-        "correlation match the mix's first two moments and its covariance with crude."
-    )
-    return Position(
-        name=f"3:2:1 crack {month_words(delivery)}",
-        quantity=barrels,
-        short_leg=CRUDE,
-        short_delivery=delivery,
-        strike=strike,
-        expiry=expiry,
-        own_forward_long=mean,
-        own_vol_long=vol,
-        own_correlation=tie,
-        note=note,
-        **rest,
-    )
+    name = f"3:2:1 crack {month_words(delivery)}"
+    return spread(name, barrels, (PRODUCTS, delivery), (CRUDE, delivery), strike, expiry=expiry, **rest)
 
 
 def month_words(delivery: str) -> str:
@@ -443,6 +417,15 @@ def outrights_and_hedges() -> Iterator[Position]:
     yield cable("North-South swap", 100, NORTH, SOUTH, 0.0, 5.5, "2028-02", side="short", **hedge)
 
 
+def blends() -> Iterator[Blend]:
+    """The mixes that legs name."""
+    for plant, heat_rate in HEAT_RATES.items():
+        parts = (Part(GAS, heat_rate), Part(ALLOWANCE, round(heat_rate * GAS_CARBON, 3)))
+        yield Blend(f"{plant} fuel", "CRN/MWh", parts, "What a MWh of power burns: GJ of gas, t of allowance.")
+    thirds = (Part(SPIRIT, 2.0 / 3.0), Part(GASOIL, 1.0 / 3.0))
+    yield Blend(PRODUCTS, "CRN/bbl", thirds, "What a barrel of crude gives, in barrels.")
+
+
 def demo_book() -> Book:
     """The demo book, made from the rules above."""
     markets = tuple(
@@ -454,6 +437,8 @@ def demo_book() -> Book:
             dynamics="shifted lognormal" if name in SHIFTS else "lognormal",
             shift=SHIFTS.get(name, 0.0),
             holidays=HOLIDAYS,
+            lot_size=LOTS[shape.unit][0],
+            lot_rule=LOTS[shape.unit][1],
             marks=tuple(
                 Mark(month, forward(name, month), volatility(name, month), daily_volatility(name, month))
                 for month in DELIVERIES
@@ -484,7 +469,9 @@ def demo_book() -> Book:
         zero_rate=ZERO_RATE,
         method="yardstick",
         note="Two winters of an invented market. Made by make_ardenmoor_winter.py, which says how.",
+        zero_curve=tuple(ZeroPoint(day, rate) for day, rate in ZERO_CURVE),
         markets=(*markets, *nights),
+        blends=tuple(blends()),
         correlations=(*pairs, Correlation(NORTH_NIGHTS, QUILL_NIGHTS, NIGHT_CORRELATION)),
         positions=(
             *gas_plants(),

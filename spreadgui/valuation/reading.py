@@ -14,6 +14,7 @@ from spreadgui.valuation.columns import BY_COLUMN_KEY
 from spreadgui.valuation.exercises import expand
 from spreadgui.valuation.group import STRIKE_INPUTS, formula_strike
 from spreadgui.valuation.naming import value_method
+from spreadgui.valuation.parts import PartReading, part_readings
 from spreadgui.valuation.price import price_lines, price_rows
 from spreadgui.valuation.results import IMPLIED_WORDS, SENSITIVITIES, State, output_row
 from spreadgui.valuation.shown import trimmed_text
@@ -110,7 +111,8 @@ class Reading:
     the name of what `unit_value` and the sensitivities come from: the book's method, Black-76 for one leg, the
     discounted difference for a forward. `intrinsic` is NaN for a forward, which has none. `sensitivities` are plain
     derivatives of the unit value in the order of results.SENSITIVITIES, `sensitivity_rows` the same as screens show
-    them. A strip has its `days`, a position with a quoted premium its `quote`. Where the position could not be priced
+    them. A strip has its `days`, a position with a quoted premium its `quote`, one on
+    blends their `parts`. Where the position could not be priced
     `reason` is set, `state` says whether it is incomplete or refused, and no number may be relied upon.
     """
 
@@ -132,6 +134,7 @@ class Reading:
     sensitivity_rows: tuple[SensitivityReading, ...] = ()
     days: tuple[DayReading, ...] = ()
     quote: QuoteReading | None = None
+    parts: tuple[PartReading, ...] = ()
     # Whether the volatilities are absolute, each in its market's unit.
     absolute_vols: bool = False
 
@@ -178,6 +181,7 @@ def read_position(slate: Slate, row: int) -> Reading:
         sensitivity_rows=tuple(_sensitivity_reading(slate, row, key, outputs) for key in SENSITIVITIES),
         days=_day_readings(slate, row) if row in slate.strips else (),
         quote=_quote_reading(slate, row, outputs),
+        parts=part_readings(slate, row, outputs),
         absolute_vols=bool(slate.law[row] == Law.NORMAL),
     )
 

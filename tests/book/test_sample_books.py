@@ -206,8 +206,9 @@ def test_the_demo_shows_every_kind_of_position(demo: Book) -> None:
     assert shapes.count(Shape.LONG_LEG_ONLY) >= 3
     assert any(position.long_leg == position.short_leg != "" for position in positions)
     assert any(position.long_leg and position.short_leg and _own_marks(position) for position in positions)
-    assert any(not position.long_leg for position in positions)
-    assert any(not position.short_leg and position.own_forward_short for position in positions)
+    blends = {blend.name for blend in demo.blends}
+    assert any(position.long_leg in blends for position in positions)
+    assert any(position.short_leg in blends for position in positions)
     assert {position.exercise for position in positions} == {"once", "business days", "all days"}
     assert sum(position.quoted_premium is not None for position in positions) >= 3
     assert {resolved.law for resolved in _resolved(demo)} == set(Law)
@@ -250,26 +251,27 @@ CLEAN = {"Quay 3": {GAS: 7.1, ALLOWANCE: 0.398}, "Loomgate": {GAS: 9.4, ALLOWANC
 THREE_TWO_ONE = {SPIRIT: 2 / 3, GASOIL: 1 / 3}
 
 
-def test_the_own_marks_of_a_mixed_leg_have_the_moments_of_the_mix(demo: Book) -> None:
+def test_a_blend_of_the_demo_has_the_moments_of_the_mix(demo: Book) -> None:
     """Against the moments of the true mix, summed over a Gauss-Hermite grid of the three forwards at the expiry."""
     mixed = [position for position in demo.positions if " clean " in position.name or "3:2:1" in position.name]
     assert len(mixed) == 5
-    for position in mixed:
+    for position, inputs in zip(demo.positions, _resolved(demo), strict=True):
+        if position not in mixed:
+            continue
         time = years(demo.valuation_date, position.expiry) if position.expiry else 0.0
-        if position.long_leg:
+        if position.short_leg != CRUDE:
             mix, other, delivery = CLEAN[position.name.partition(" clean")[0]], SOUTH, position.long_delivery
-            marks = position.own_forward_short, position.own_vol_short
+            marks = inputs.forward_short, inputs.vol_short
         else:
             mix, other, delivery = THREE_TWO_ONE, CRUDE, position.short_delivery
-            marks = position.own_forward_long, position.own_vol_long
+            marks = inputs.forward_long, inputs.vol_long
         ends, weights = _ends(demo, [*mix, other], delivery, time)
         total = sum(weight * end for weight, end in zip(mix.values(), ends[:2], strict=True))
         mean, other_vol = weights @ total, Quotes.of(demo).mark(other, delivery).volatility
         variance = np.log(weights @ total**2 / mean**2) / time
         covariance = np.log(weights @ (total * ends[2]) / (mean * (weights @ ends[2]))) / time
-        # The own marks are written to four decimals.
-        assert marks == pytest.approx((mean, np.sqrt(variance)), abs=6e-5)
-        assert position.own_correlation == pytest.approx(covariance / np.sqrt(variance) / other_vol, abs=6e-5)
+        assert marks == pytest.approx((mean, np.sqrt(variance)), rel=1e-7)
+        assert inputs.correlation == pytest.approx(covariance / np.sqrt(variance) / other_vol, rel=1e-7)
 
 
 def _ends(book: Book, markets: list[str], delivery: str, time: float) -> tuple[np.ndarray, np.ndarray]:

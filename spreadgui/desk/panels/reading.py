@@ -11,6 +11,7 @@ from PySide6.QtWidgets import QFrame, QHBoxLayout, QScrollArea, QSizePolicy, QTo
 from spreadgui.desk.look.pane import ElidedLabel, Figure, Pane
 from spreadgui.desk.look.theme import Theme, set_rank, set_tone
 from spreadgui.desk.panels.days_sheet import RANKS, days_sheet
+from spreadgui.desk.panels.parts_sheet import parts_sheet
 from spreadgui.desk.panels.reading_sheets import (
     CAUTION,
     Headline,
@@ -50,13 +51,14 @@ class ReadingPane(Pane):
         super().__init__("Reading", parent=parent)
         self._waiting = False
         self._headline = _HeadlineRow()
-        self._methods, self._sensitivities, self._days = SheetView(theme), SheetView(theme), SheetView(theme)
-        self._days.setAccessibleName("Days")
+        self._methods, self._sensitivities, self._parts, self._days = (SheetView(theme) for _ in range(4))
+        for view, name in ((self._parts, "Parts"), (self._days, "Days")):
+            view.setAccessibleName(name)
         self._quote = ElidedLabel()
         self._unfold = QToolButton()
         self._unfold.setCheckable(True)
         set_rank(self._quote, "small")
-        for part in (self._days, self._unfold, self._quote):
+        for part in (self._parts, self._days, self._unfold, self._quote):
             part.hide()
         self._roll = _Roll()
         self._caution = ElidedLabel(CAUTION)
@@ -123,8 +125,12 @@ class ReadingPane(Pane):
         return self._unfold.isChecked() and not self._unfold.isHidden()
 
     def _views(self) -> tuple[SheetView, ...]:
-        """The tables, the last of them only in use while a strip is unfolded."""
-        return self._methods, self._sensitivities, self._days
+        """The tables: two always, the third for blends, the last while a strip is unfolded."""
+        return self._methods, self._sensitivities, self._parts, self._days
+
+    def _view_of(self, sheet: Sheet) -> SheetView:
+        views = {"Methods": self._methods, "Sensitivities": self._sensitivities, "Parts": self._parts}
+        return views.get(sheet.name, self._days)
 
     @Slot()
     def _on_unfold(self) -> None:
@@ -157,6 +163,7 @@ class ReadingPane(Pane):
         column.setSpacing(_GAP)
         column.addWidget(self._methods)
         column.addWidget(self._sensitivities)
+        column.addWidget(self._parts)
         column.addWidget(self._unfold, 0, Qt.AlignmentFlag.AlignLeft)
         column.addWidget(self._days)
         column.addStretch(1)
@@ -191,7 +198,8 @@ class ReadingPane(Pane):
             pairs = sensitivities_sheet(reading, paired=False)
         if self._methods.needed_width(methods) > self._room((methods, pairs)):
             methods = methods_sheet(reading, remarks=False)
-        self._show_sheets((methods, pairs, *self._day_sheets(reading, (methods, pairs))))
+        parts = (parts_sheet(reading),) if reading.parts else ()
+        self._show_sheets((methods, pairs, *parts, *self._day_sheets(reading, (methods, pairs, *parts))))
 
     def _day_sheets(self, reading: Reading, others: tuple[Sheet, ...]) -> tuple[Sheet, ...]:
         """The days of an unfolded strip, with as many of its columns as fit."""
@@ -204,9 +212,11 @@ class ReadingPane(Pane):
     def _show_sheets(self, sheets: tuple[Sheet, ...]) -> None:
         rows = sum(len(sheet.rows) for sheet in sheets)
         spare = max(self._roll.height() - self._height_of(sheets), 0) // rows
-        self._days.setVisible(len(sheets) == len(self._views()))
-        for view, sheet in zip(self._views(), sheets, strict=False):
-            view.show_sheet(sheet, self._room(sheets), min(spare, _MOST_ROW_SPARE))
+        shown = {sheet.name for sheet in sheets}
+        self._parts.setVisible("Parts" in shown)
+        self._days.setVisible("Days" in shown)
+        for sheet in sheets:
+            self._view_of(sheet).show_sheet(sheet, self._room(sheets), min(spare, _MOST_ROW_SPARE))
 
     def _room(self, sheets: tuple[Sheet, ...]) -> int:
         """The width for the tables, less the scroll bar if these sheets need one."""
@@ -214,9 +224,9 @@ class ReadingPane(Pane):
         return self._roll.width() - (bar if self._height_of(sheets) > self._roll.height() else 0)
 
     def _height_of(self, sheets: tuple[Sheet, ...]) -> int:
-        pairs = zip(self._views(), sheets, strict=False)
+        heights = [self._view_of(sheet).needed_height(sheet) for sheet in sheets]
         unfolding = 0 if self._unfold.isHidden() else self._unfold.sizeHint().height() + _GAP
-        return sum(view.needed_height(sheet) for view, sheet in pairs) + _GAP * (len(sheets) - 1) + unfolding
+        return sum(heights) + _GAP * (len(sheets) - 1) + unfolding
 
     @Slot(int)
     def _step(self, step: int) -> None:

@@ -8,6 +8,7 @@ from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 from spreadgui.desk.panels.days_sheet import copied_days
+from spreadgui.desk.panels.parts_sheet import parts_sheet
 from spreadgui.desk.panels.sheets import (
     DASH,
     Cell,
@@ -241,6 +242,7 @@ def copied_reading(reading: Reading) -> str:
     )
     tables = (methods_sheet(reading, remarks=True).copied, sensitivities_sheet(reading, paired=False).copied)
     days = (copied_days(reading),) if reading.days else ()
+    days += (parts_sheet(reading).copied,) if reading.parts else ()
     quote = [(quote_line(reading),)] if reading.quote else []
     return "\n".join([tabbed([(reading.subject,), *figures, *quote]), *(tabbed(table) for table in (*tables, *days))])
 

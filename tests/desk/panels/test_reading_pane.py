@@ -31,7 +31,9 @@ PRICED = ["spark", "sold spark", "exchange", "floor", "outright", "forward", "hu
 
 
 def views(pane: ReadingPane) -> tuple[SheetView, SheetView]:
-    methods, sensitivities = [view for view in pane.findChildren(SheetView) if view.accessibleName() != "Days"]
+    methods, sensitivities = [
+        view for view in pane.findChildren(SheetView) if view.accessibleName() not in ("Parts", "Days")
+    ]
     assert (methods.accessibleName(), sensitivities.accessibleName()) == ("Methods", "Sensitivities")
     return methods, sensitivities
 
