@@ -49,6 +49,7 @@ ACTS: tuple[Act, ...] = (
     Act("go_positions", "Go to Positions", "View", "Put the keyboard into the grid.", "Ctrl+1"),
     Act("go_marks", "Go to Marks", "View", "Put the keyboard into the marks.", "Ctrl+4"),
     Act("go_correlations", "Go to Correlations", "View", "Put the keyboard into the correlations.", "Ctrl+5"),
+    Act("go_blends", "Go to Blends", "View", "Put the keyboard into the blends.", "Ctrl+6"),
     Act("go_landscape", "Go to Landscape", "View", "Put the keyboard into the Landscape.", "Ctrl+2"),
     Act("go_reading", "Go to Reading", "View", "Put the keyboard into the Reading.", "Ctrl+3"),
     Act("switch_look", "Light or dark", "View", "Switch between the light and the dark look.", "Ctrl+L", "theme-dark",

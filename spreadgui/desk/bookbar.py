@@ -6,19 +6,20 @@ from collections.abc import Callable
 from typing import get_args
 
 from PySide6.QtCore import QSignalBlocker, Qt, Signal, Slot
-from PySide6.QtWidgets import QComboBox, QHBoxLayout, QLabel, QLineEdit, QWidget
+from PySide6.QtWidgets import QComboBox, QHBoxLayout, QLabel, QLineEdit, QToolButton, QWidget
 
 from spreadgui.book.changes import set_book
 from spreadgui.book.entries import EntryError, Value, date, quoted, words
 from spreadgui.book.records import ValuationMethod
 from spreadgui.desk.look.theme import set_refused, set_tone
 from spreadgui.desk.workbench import Workbench
+from spreadgui.desk.zero_curve_dialog import ZeroCurveDialog
 from spreadgui.pricing.methods import METHODS
 from spreadgui.valuation.typed import number_in_percent, percent_text
 
 
 class BookBar(QWidget):
-    """Title, valuation date, zero rate, method and gap tolerance of the book.
+    """Title, valuation date, zero rate or curve, method and gap tolerance of the book.
 
     `told(sentence)` says what a person should know.
     """
@@ -28,10 +29,11 @@ class BookBar(QWidget):
     def __init__(self, workbench: Workbench, parent: QWidget | None = None) -> None:
         super().__init__(parent)
         self._workbench = workbench
-        self.title = _line("Book title", 230)
+        self.title = _line("Book title", 170)
         self.date = _line("Valuation date, written as 2027-01-15", 96)
         self.rate = _line("Zero rate in per cent a year, continuous", 64)
         self.rate.setAlignment(Qt.AlignmentFlag.AlignRight)
+        self.curve = QToolButton()
         self.tolerance = _line("Formula gap tolerance in per cent of the premium", 52)
         self.tolerance.setAlignment(Qt.AlignmentFlag.AlignRight)
         self.method = QComboBox()
@@ -44,6 +46,8 @@ class BookBar(QWidget):
         self.title.editingFinished.connect(self._take_title)
         self.date.editingFinished.connect(self._take_date)
         self.rate.editingFinished.connect(self._take_rate)
+        self.curve.setToolTip("Zero rates by day, in place of one flat rate.")
+        self.curve.clicked.connect(self._edit_curve)
         self.tolerance.editingFinished.connect(self._take_tolerance)
         self.method.activated.connect(self._take_method)
         workbench.followed.connect(self.show_book)
@@ -63,6 +67,9 @@ class BookBar(QWidget):
             if line.text() != text:
                 line.setText(text)
             set_refused(line, False)
+        points = len(book.zero_curve)
+        self.rate.setEnabled(not points)
+        self.curve.setText(f"Curve ({points})…" if points else "Curve…")
         with QSignalBlocker(self.method):
             self.method.setCurrentIndex(self.method.findData(book.method))
 
@@ -74,17 +81,19 @@ class BookBar(QWidget):
             ("Book", self.title, ""),
             ("Valuation date", self.date, ""),
             ("Zero rate", self.rate, "%"),
+            ("", self.curve, ""),
             ("Value by", self.method, ""),
-            ("Gap tolerance", self.tolerance, "% of premium"),
+            ("Gap tolerance", self.tolerance, "%"),
         ):
-            label = QLabel(words_)
-            set_tone(label, "muted")
-            label.setBuddy(widget)
-            row.addWidget(label)
+            if words_:
+                label = QLabel(words_)
+                set_tone(label, "muted")
+                label.setBuddy(widget)
+                row.addWidget(label)
             row.addWidget(widget)
             if unit:
                 row.addWidget(QLabel(unit))
-            row.addSpacing(14)
+            row.addSpacing(10)
         row.addStretch(1)
 
     @Slot()
@@ -98,6 +107,12 @@ class BookBar(QWidget):
     @Slot()
     def _take_rate(self) -> None:
         self._take(self.rate, "zero_rate", number_in_percent, "set the zero rate")
+
+    @Slot()
+    def _edit_curve(self) -> None:
+        dialog = ZeroCurveDialog(self._workbench.book, self)
+        if dialog.exec() == ZeroCurveDialog.DialogCode.Accepted:
+            self._set("zero_curve", dialog.points, "set the zero curve")
 
     @Slot()
     def _take_tolerance(self) -> None:
@@ -119,7 +134,7 @@ class BookBar(QWidget):
         line.setToolTip(line.accessibleName())
         self._set(field, value, change)
 
-    def _set(self, field: str, value: Value, change: str) -> None:
+    def _set(self, field: str, value: object, change: str) -> None:
         if value is not None and value != getattr(self._workbench.book, field):
             self._workbench.apply(set_book(self._workbench.book, field, value, change))
 

@@ -154,6 +154,7 @@ class Window(QMainWindow):
             "go_positions": self.positions.view.setFocus,
             "go_marks": lambda: self._go_to_market("marks"),
             "go_correlations": lambda: self._go_to_market("correlations"),
+            "go_blends": lambda: self._go_to_market("blends"),
             "go_landscape": self._go_to_landscape,
             "go_reading": self.reading.setFocus,
             "switch_look": self.switch_look,

@@ -37,7 +37,8 @@ _STEPS = 10_000
 
 
 def contracts_in_use(book: Book) -> tuple[Contract, ...]:
-    """The contracts that legs of the positions name, in the order of the book's markets, then by delivery.
+    """The contracts that legs of the positions name, alone or in a blend, in the order of the book's markets, then by
+    delivery.
 
     A leg whose market the book has not exactly once, or with a tie strength that is none, or whose delivery is no
     month, names no contract; `market.check.faults_of` says why.
@@ -50,8 +51,10 @@ def contracts_in_use(book: Book) -> tuple[Contract, ...]:
     >>> contracts_in_use(book)
     (('Power', '2027-01'), ('Gas', '2027-02'))
     """
-    legs = {(one.long_leg, one.long_delivery) for one in book.positions}
-    legs |= {(one.short_leg, one.short_delivery) for one in book.positions}
+    named_by_legs = {(one.long_leg, one.long_delivery) for one in book.positions}
+    named_by_legs |= {(one.short_leg, one.short_delivery) for one in book.positions}
+    parts = {blend.name: [part.market for part in blend.parts] for blend in book.blends}
+    legs = {(market, month) for leg, month in named_by_legs for market in parts.get(leg, [leg])}
     quotes, place = Quotes.of(book), {market.name: index for index, market in enumerate(book.markets)}
     named = [(leg, month) for leg, month in legs if is_delivery(month) and np.isfinite(_tie_strength(quotes, leg))]
     return tuple(sorted(named, key=lambda contract: (place[contract[0]], contract[1])))

@@ -156,7 +156,8 @@ def _names(slate: Slate, request: SurfaceRequest) -> tuple[str, tuple[str, str],
 
 
 def _axis_units(slate: Slate, row: int) -> tuple[str, str]:
-    units, position = {market.name: market.unit for market in slate.book.markets}, slate.book.positions[row]
+    position = slate.book.positions[row]
+    units = {one.name: one.unit for one in slate.book.blends} | {one.name: one.unit for one in slate.book.markets}
     return units.get(position.long_leg, ""), units.get(position.short_leg, "")
 
 

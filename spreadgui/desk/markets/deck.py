@@ -7,13 +7,17 @@ from PySide6.QtWidgets import QStackedWidget, QVBoxLayout, QWidget
 
 from spreadgui.desk.look.choice import Choice
 from spreadgui.desk.look.theme import Theme
+from spreadgui.desk.markets.blends_pane import BlendsPane
 from spreadgui.desk.markets.correlations_pane import CorrelationsPane
 from spreadgui.desk.markets.marks_pane import MarksPane
 from spreadgui.desk.workbench import Workbench
 
 
 class MarketDeck(QWidget):
-    """Marks and Correlations, with chips to choose between them. `told(sentence)` says what a person should know."""
+    """Marks, Correlations and Blends, with chips to choose between them.
+
+    `told(sentence)` says what a person should know.
+    """
 
     told = Signal(str)
 
@@ -21,11 +25,13 @@ class MarketDeck(QWidget):
         super().__init__(parent)
         self.marks = MarksPane(workbench, theme)
         self.correlations = CorrelationsPane(workbench, theme)
-        self._panes: dict[str, MarksPane | CorrelationsPane] = {
+        self.blends = BlendsPane(workbench, theme)
+        self._panes: dict[str, MarksPane | CorrelationsPane | BlendsPane] = {
             "marks": self.marks,
             "correlations": self.correlations,
+            "blends": self.blends,
         }
-        self.choice = Choice([("marks", "Marks"), ("correlations", "Correlations")], "Markets")
+        self.choice = Choice([("marks", "Marks"), ("correlations", "Correlations"), ("blends", "Blends")], "Markets")
         self._stack = QStackedWidget()
         for pane in self._panes.values():
             self._stack.addWidget(pane)
@@ -39,7 +45,7 @@ class MarketDeck(QWidget):
 
     @Slot(str)
     def show_pane(self, key: str) -> None:
-        """Bring a pane to the front: "marks" or "correlations"; KeyError for none of them."""
+        """Bring a pane to the front: "marks", "correlations" or "blends"; KeyError for none of them."""
         self._stack.setCurrentWidget(self._panes[key])
         self.choice.set_current(key)
 

@@ -76,6 +76,14 @@ class MarksModel(QAbstractTableModel):
         self.endResetModel()
 
     @property
+    def legs(self) -> set[str]:
+        """What a leg that reads the market is called: its name, or that of a blend that holds it."""
+        if self.market is None:
+            return set()
+        name, blends = self.market.name, self._workbench.book.blends
+        return {name, *(blend.name for blend in blends if any(part.market == name for part in blend.parts))}
+
+    @property
     def is_absolute(self) -> bool:
         """Whether the market's volatilities are amounts in its unit."""
         return self.market is not None and self.market.dynamics == "normal"
@@ -267,14 +275,17 @@ class MarksModel(QAbstractTableModel):
 
     def _look_up(self) -> None:
         self._periods = periods_of(self.market) if self.market is not None else ()
-        name = "" if self.market is None else self.market.name
+        names = self.legs
         self._readers = Counter(
             month
             for position in self._workbench.book.positions
-            for leg, month in (
-                (position.long_leg, position.long_delivery), (position.short_leg, position.short_delivery),
-            )
-            if leg == name
+            for month in {
+                month
+                for leg, month in (
+                    (position.long_leg, position.long_delivery), (position.short_leg, position.short_delivery),
+                )
+                if leg in names
+            }
         )  # fmt: skip
 
     @Slot()

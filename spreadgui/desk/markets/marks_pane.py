@@ -151,7 +151,8 @@ class MarksPane(Pane):
             self.set_subtitle("")
             self.show_empty(EMPTY)
             return
-        used = sum(market.name in (one.long_leg, one.short_leg) for one in self._workbench.book.positions)
+        legs = self.model.legs
+        used = sum(bool({one.long_leg, one.short_leg} & legs) for one in self._workbench.book.positions)
         self.set_subtitle(f"{market.name} · {len(market.marks)} months · read by {used} positions", market.note)
         self.chart.show_market(market)
         self.show_body()

@@ -241,10 +241,10 @@ def copied_reading(reading: Reading) -> str:
         ("Time value", plain_number(reading.time_value), reading.unit),
     )
     tables = (methods_sheet(reading, remarks=True).copied, sensitivities_sheet(reading, paired=False).copied)
-    days = (copied_days(reading),) if reading.days else ()
-    days += (parts_sheet(reading).copied,) if reading.parts else ()
+    more = [parts_sheet(reading).copied] if reading.parts else []
+    more += [copied_days(reading)] if reading.days else []
     quote = [(quote_line(reading),)] if reading.quote else []
-    return "\n".join([tabbed([(reading.subject,), *figures, *quote]), *(tabbed(table) for table in (*tables, *days))])
+    return "\n".join([tabbed([(reading.subject,), *figures, *quote]), *(tabbed(table) for table in (*tables, *more))])
 
 
 def reason_text(reading: Reading) -> str:
