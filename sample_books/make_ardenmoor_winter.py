@@ -75,6 +75,11 @@ NIGHTS: Mapping[str, tuple[tuple[float, float], ...]] = {
     QUILL_NIGHTS: ((17.0, 29.0), (6.5, 27.0), (2.5, 25.0), (4.0, 23.5), (8.0, 22.0), (11.0, 21.5)),
 }
 NIGHT_CORRELATION, NIGHT_TIE, NIGHT_DAILY = 0.78, 0.8, 1.9
+# The desk has estimated some correlations; one standard error of each.
+ESTIMATED: Mapping[frozenset[str], float] = {
+    frozenset((SOUTH, GAS)): 0.02, frozenset((NORTH, SOUTH)): 0.01, frozenset((SOUTH, QUILL)): 0.02,
+    frozenset((NORTH, COAL)): 0.05,
+}  # fmt: skip
 HOLIDAYS = tuple(
     datetime.date(year + (month == 1), month, day)
     for year in (2026, 2027, 2028)
@@ -131,7 +136,7 @@ SHAPES: Mapping[str, Shape] = {
     ),
     GAS: Shape("CRN/GJ", 0.45, 0.62, 0.31, 1.5, 1.15, (0.93, 0.16, 0.22, 0.10), "Lot 1,000 GJ a day over the month."),
     COAL: Shape("CRN/t", 0.15, 0.34, 0.21, 1.0, 1.00, (0.40, 0.02, 0.34, 0.58), "Lot 1,000 t."),
-    ALLOWANCE: Shape("CRN/t CO2", 0.02, 0.40, 0.33, 0.8, 1.00, (0.36, 0.16, 0.16, 0.66), "Lot 1,000 t."),
+    ALLOWANCE: Shape("CRN/t CO2", 0.12, 0.40, 0.33, 0.8, 1.00, (0.36, 0.16, 0.16, 0.66), "Lot 1,000 t."),
     CRUDE: Shape("CRN/bbl", 0.14, 0.37, 0.25, 1.1, 1.00, (0.14, 0.00, 0.96, 0.08), "Lot 1,000 bbl."),
     SPIRIT: Shape("CRN/bbl", 0.22, 0.39, 0.27, 1.1, 1.00, (0.10, 0.02, 0.92, 0.05), "Lot 1,000 bbl."),
     GASOIL: Shape("CRN/bbl", 0.20, 0.38, 0.26, 1.1, 1.00, (0.20, 0.10, 0.91, 0.12), "Lot 1,000 bbl."),
@@ -461,7 +466,10 @@ def demo_book() -> Book:
         )
         for name, marks in NIGHTS.items()
     )
-    pairs = [Correlation(a, b, correlation(a, b)) for a, b in itertools.combinations(SHAPES, 2)]
+    pairs = [
+        Correlation(a, b, correlation(a, b), ESTIMATED.get(frozenset((a, b))))
+        for a, b in itertools.combinations(SHAPES, 2)
+    ]
     return Book(
         title="Ardenmoor winter",
         currency="CRN",

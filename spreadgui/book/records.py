@@ -8,7 +8,7 @@ written "2027-01". The volatilities of a market with normal dynamics are absolut
 
 Version 2 of the file added, each with a default: dynamics, shift, lot and calendar of a market, daily volatility and
 note of a mark, standard error and note of a correlation, exercise and quoted premium of a position, and gap tolerance,
-zero curve, blends and settles of a book. A file of version 1 reads as it stands.
+zero curve and blends of a book. A file of version 1 reads as it stands.
 """
 
 from __future__ import annotations
@@ -103,13 +103,6 @@ class ZeroPoint(Struct, frozen=True, forbid_unknown_fields=True, gc=False):
     rate: float
 
 
-class Settles(Struct, frozen=True, forbid_unknown_fields=True, gc=False):
-    """Where the settle history stands: a path relative to the book's folder, and the SHA-256 of the file."""
-
-    path: str
-    sha256: str
-
-
 class Position(Struct, frozen=True, forbid_unknown_fields=True, omit_defaults=True, gc=False):
     """One line of the book.
 
@@ -162,7 +155,6 @@ class Book(Struct, frozen=True, forbid_unknown_fields=True, kw_only=True):
     gap_tolerance: float = 0.01
     note: str = ""
     zero_curve: tuple[ZeroPoint, ...] = ()
-    settles: Settles | None = None
     markets: tuple[Market, ...] = ()
     blends: tuple[Blend, ...] = ()
     correlations: tuple[Correlation, ...] = ()

@@ -28,7 +28,6 @@ _WORDS: dict[str, dict[str, str]] = {
         "gap_tolerance": "The largest gap to the Yardstick at which a formula is trusted, a decimal of the premium.",
         "note": "Anything the desk wants to remember of this book.",
         "zero_curve": "Zero rates by day; with none, the flat zero rate discounts.",
-        "settles": "The settle history that estimates are made from; null where there is none.",
         "markets": "The markets that a leg can name, with their marks.",
         "blends": "Weighted mixes of markets that a leg can name like a market.",
         "correlations": "The correlations of two markets; each pair once.",
@@ -74,10 +73,6 @@ _WORDS: dict[str, dict[str, str]] = {
     "ZeroPoint": {
         "date": "The day that is discounted from, as 2027-12-01.",
         "rate": "The zero rate to it: a decimal a year, continuous, ACT/365F.",
-    },
-    "Settles": {
-        "path": "The file of settles, from the book's folder.",
-        "sha256": "The SHA-256 of that file, in hexadecimal.",
     },
     "Position": {field.key: field.help for field in FIELDS},
 }

@@ -79,6 +79,7 @@ class Window(QMainWindow):
         from spreadgui.desk.look.pane import Pane
         from spreadgui.desk.message import MessageStrip
         from spreadgui.desk.panels.reading import ReadingPane
+        from spreadgui.desk.simulation import SimulationThread
         from spreadgui.desk.status import StatusLine
         from spreadgui.desk.workbench import Workbench
 
@@ -87,6 +88,7 @@ class Window(QMainWindow):
         self.files.path = path
         self.positions = PositionsPane(self.workbench, self.theme)
         self.reading = ReadingPane(self.theme)
+        self.simulations = SimulationThread(self)
         self._vacant = Pane("Landscape")
         self.message = MessageStrip()
         self.bar = BookBar(self.workbench)
@@ -176,6 +178,13 @@ class Window(QMainWindow):
         self.positions.told.connect(self.status.tell)
         self.bar.told.connect(self.status.tell)
         self.positions.row_changed.connect(self._look_at)
+        self.positions.row_changed.connect(self.simulations.cancel)
+        self.simulations.progressed.connect(self.reading.simulation.show_progress)
+        self.simulations.done.connect(self.reading.show_simulation)
+        self.simulations.failed.connect(self.reading.simulation.say)
+        self.reading.simulation.cancelled.connect(self.simulations.cancel)
+        self.reading.simulation.asked.connect(self._simulate)
+        workbench.followed.connect(self.simulations.cancel)
         self._look_at(-1)
 
     def complete(self) -> None:
@@ -232,6 +241,11 @@ class Window(QMainWindow):
             return
         self._late.start()
         self.workbench.set_focus(row, None if self.landscape is None else self.landscape.request(row))
+
+    @Slot()
+    def _simulate(self) -> None:
+        if self.workbench.focus is not None:
+            self.simulations.start(self.workbench.slate, self.workbench.focus)
 
     def _go_to_landscape(self) -> None:
         if self.landscape is not None:
@@ -301,6 +315,7 @@ class Window(QMainWindow):
     def shut(self) -> None:
         """End the pricing thread, where it has begun."""
         if hasattr(self, "workbench"):
+            self.simulations.close()
             self.workbench.close()
 
 

@@ -69,6 +69,7 @@ class ResolvedPosition:
     vol_long: float = _NAN
     vol_short: float = _NAN
     correlation: float = _NAN
+    correlation_error: float = _NAN
     shift_long: float = 0.0
     shift_short: float = 0.0
     years: float = _NAN
@@ -196,6 +197,9 @@ def _resolve_correlation(resolved: ResolvedPosition, position: Position, quotes:
     elif position.long_leg and position.short_leg:
         try:
             resolved.correlation = quotes.correlation(
+                position.long_leg, position.long_delivery, position.short_leg, position.short_delivery
+            )
+            resolved.correlation_error = quotes.correlation_error(
                 position.long_leg, position.long_delivery, position.short_leg, position.short_delivery
             )
         except UnknownMarkError as error:

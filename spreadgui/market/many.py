@@ -51,7 +51,7 @@ def resolve_many(
     long, short = _Legs.of(fields, "long", quotes), _Legs.of(fields, "short", quotes)
     laws = long.law_beside(short), short.law_beside(long)
     shape = np.select([short.absent, long.absent], [Shape.LONG_LEG_ONLY, Shape.SHORT_LEG_ONLY], Shape.SPREAD)
-    correlation, tied = _correlations(fields, long, short, quotes)
+    correlation, error, tied = _correlations(fields, long, short, quotes)
     rates = zero_rates if isinstance(zero_rates, ZeroRates) else ZeroRates(zero_rates)
     time, discount, rate, timed = _times(fields["expiry"], valuation_date, rates)
     once = np.array([exercise == "once" for exercise in fields["exercise"]], dtype=np.bool_)
@@ -61,7 +61,7 @@ def resolve_many(
         plain &= long.taken(laws[0]) & short.taken(laws[1])
     numbers = {
         "forward_long": long.forward, "forward_short": short.forward, "vol_long": long.vol, "vol_short": short.vol,
-        "shift_long": long.shift, "shift_short": short.shift, "correlation": correlation,
+        "shift_long": long.shift, "shift_short": short.shift, "correlation": correlation, "correlation_error": error,
         "years": time, "discount": discount, "rate": rate,
     }  # fmt: skip
     law = np.nan_to_num(np.where(long.absent, laws[1], laws[0]))
@@ -137,22 +137,27 @@ def _marked(quotes: Quotes, leg: str, delivery: str) -> tuple[float, float, floa
     return mark.forward, mark.volatility, shift, float(law), market.unit
 
 
-def _correlations(fields: dict[str, list[Any]], long: _Legs, short: _Legs, quotes: Quotes) -> tuple[FloatArray, Flags]:
-    """Of two named legs, the row's own or the book's; and where there is one, or none is needed."""
+def _correlations(
+    fields: dict[str, list[Any]], long: _Legs, short: _Legs, quotes: Quotes
+) -> tuple[FloatArray, FloatArray, Flags]:
+    """Of two named legs, the row's own or the book's, with the standard error of the book's; and where there is one, or
+    none is needed."""
     own, needed = _floats(fields["own_correlation"]), ~long.absent & ~short.absent
     pairs, place = np.unique(long.contract * len(short.names) + short.contract, return_inverse=True)
     used = np.zeros(len(pairs), dtype=np.bool_)
     used[place[needed & np.isnan(own)]] = True
-    found = np.full(len(pairs), np.nan)
+    found, errors = np.full((2, len(pairs)), np.nan)
     for number in np.flatnonzero(used).tolist():
         first, second = divmod(int(pairs[number]), len(short.names))
         try:
             found[number] = quotes.correlation(*long.names[first], *short.names[second])
+            errors[number] = quotes.correlation_error(*long.names[first], *short.names[second])
         except UnknownMarkError:
             continue
     correlation = np.where(needed, np.where(np.isnan(own), found[place], own), np.nan)
+    error = np.where(needed & np.isnan(own), errors[place], np.nan)
     with np.errstate(invalid="ignore"):
-        return correlation, ~needed | (np.abs(correlation) <= 1.0)
+        return correlation, error, ~needed | (np.abs(correlation) <= 1.0)
 
 
 def _times(

@@ -37,6 +37,7 @@ class Quotes:
     # What blends have been matched to (market.blends), and why some could not be.
     _broken: Mapping[str, UnknownMarkError] = field(default_factory=dict)
     _ties: Mapping[tuple[Contract, Contract], float] = field(default_factory=dict)
+    _errors: Mapping[frozenset[str], float] = field(default_factory=dict)
 
     @staticmethod
     def of(book: Book) -> Quotes:
@@ -56,6 +57,11 @@ class Quotes:
             frozenset(contract for contract, count in contracts.items() if count > 1),
             frozenset(pair for pair, count in pairs.items() if count > 1),
             blends,
+            _errors={
+                frozenset((pair.first, pair.second)): pair.standard_error
+                for pair in book.correlations
+                if pair.standard_error is not None
+            },
         )
 
     def blend(self, name: str) -> Blend | None:
@@ -111,6 +117,15 @@ class Quotes:
             return self._correlations[pair] * tie
         except KeyError:
             raise UnknownMarkError(f"the book has no correlation of {names}", missing=True) from None
+
+    def correlation_error(self, first: str, first_delivery: str, second: str, second_delivery: str) -> float:
+        """One standard error of the correlation of two contracts, decayed as the correlation is; NaN where the markets'
+        correlation was not estimated, or the legs are no two different markets."""
+        error = self._errors.get(frozenset((first, second))) if first != second else None
+        if error is None:
+            return math.nan
+        apart = delivery_years_apart(first_delivery, second_delivery) if first_delivery and second_delivery else 0.0
+        return error * math.exp(-0.5 * apart * self._tie_strength(first) - 0.5 * apart * self._tie_strength(second))
 
     def _tie_strength(self, name: str) -> float:
         strength = self.market(name).tie_strength

@@ -16,6 +16,7 @@ __all__ = [
     "margrabe",
     "modified_kirk",
     "shifted",
+    "simulation",
     "yardstick",
 ]
 

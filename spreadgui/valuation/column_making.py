@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
+
 from spreadgui.book.fields import BY_KEY
 from spreadgui.valuation.column import Column, Numbers, Rows, Words
 from spreadgui.valuation.naming import value_method
@@ -58,6 +60,22 @@ def position_premium_gap(slate: Slate, results: LiveResults, rows: Rows) -> Floa
 def implied_distance(slate: Slate, results: LiveResults, rows: Rows) -> FloatArray:
     """The implied correlation less the one in use."""
     found: FloatArray = results.values("implied_correlation")[rows] - slate.values("correlation")[rows]
+    return found
+
+
+def guess_band(slate: Slate, results: LiveResults, rows: Rows) -> FloatArray:
+    """How far the position's value is apart between the two ends of an estimated correlation."""
+    apart = results.values("guess_high")[rows] - results.values("guess_low")[rows]
+    found: FloatArray = np.abs(slate.values("quantity")[rows] * apart)
+    return found
+
+
+def guess_share(_slate: Slate, results: LiveResults, rows: Rows) -> FloatArray:
+    """The same as a part of the premium."""
+    value = results.values("value")[rows]
+    apart = results.values("guess_high")[rows] - results.values("guess_low")[rows]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        found: FloatArray = np.where(value > 0.0, np.abs(apart) / value, np.nan)
     return found
 
 

@@ -19,6 +19,8 @@ from spreadgui.valuation.column_making import (
     for_position,
     gap,
     gap_share,
+    guess_band,
+    guess_share,
     implied_distance,
     implied_word,
     of_input,
@@ -152,6 +154,21 @@ def _implied() -> list[Column]:
     ]  # fmt: skip
 
 
+def _guesses() -> list[Column]:
+    """What an estimated correlation leaves open."""
+    return [
+        computed("position_guess_low", "Value, correlation lower",
+                 "The position's value with its estimated correlation one standard error lower.",
+                 for_position("guess_low"), "{currency}", decimals=0),
+        computed("position_guess_high", "Value, correlation higher",
+                 "The position's value with its estimated correlation one standard error higher.",
+                 for_position("guess_high"), "{currency}", decimals=0),
+        computed("guess_band", "Cost of the guess", "How far the two are apart.", guess_band, "{currency}", decimals=0),
+        computed("guess_band_share", "Cost of the guess", "How far the two are apart, in per cent of the value.",
+                 guess_share, "% of premium", scale=100.0, decimals=2),
+    ]  # fmt: skip
+
+
 COLUMNS: tuple[Column, ...] = (
     worded("name", pinned=True),
     computed("position_value", "Value", "Quantity times unit value; below zero for what the desk owes.",
@@ -191,6 +208,7 @@ COLUMNS: tuple[Column, ...] = (
            words=row_words, computed=True),
     entered("quoted_premium", "unit value", 6, 2, of_input("quoted_premium")),
     *_implied(),
+    *_guesses(),
     *_position_sensitivities(),
     computed("position_rate_sensitivity", "Rate sensitivity",
              "Change of value per 0.01 of the zero rate, for the whole position; the forwards stand still.",
@@ -217,5 +235,6 @@ VALUE_TABLE: tuple[str, ...] = (
     *(f"{method.key}_gap{kind}" for method in METHODS if not method.reference for kind in ("", "_share")),
     "formula_check", "quoted_premium", "premium_gap", "position_premium_gap", "implied_correlation",
     "implied_distance", "implied_correlation_error", "implied_status",
+    "position_guess_low", "position_guess_high", "guess_band", "guess_band_share",
     "state", "reason",
 )  # fmt: skip

@@ -97,9 +97,11 @@ class Chain(NamedTuple):
         }
 
 
-def expand(slate: Slate, rows: RowArray) -> Exercises:
-    """The exercises of `rows`, which must be ready."""
+def expand(slate: Slate, rows: RowArray, correlation: FloatArray | None = None) -> Exercises:
+    """The exercises of `rows`, which must be ready; with another marked `correlation` for each, if one is given."""
     inputs, codes = slate.inputs[:, rows], (slate.kind[rows], slate.shape[rows], slate.law[rows])
+    if correlation is not None:
+        inputs[_LINE["correlation"]] = correlation
     strips = [slate.strips.get(row) for row in rows.tolist()] if slate.strips else []
     if not any(strips):
         everyone = np.arange(len(rows))

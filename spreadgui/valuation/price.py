@@ -15,6 +15,7 @@ from spreadgui.pricing.methods import method as method_of
 from spreadgui.pricing.results import Sensitivities
 from spreadgui.valuation.exercises import Exercises, expand
 from spreadgui.valuation.group import Group, groups
+from spreadgui.valuation.guesses import guess
 from spreadgui.valuation.quoted import imply
 from spreadgui.valuation.results import NEEDED, OUTPUTS, SENSITIVITIES, Part, output_row
 from spreadgui.valuation.slate import FloatArray, RowArray, Slate
@@ -64,6 +65,7 @@ def price_rows(slate: Slate, rows: RowArray, executor: Executor | None = None) -
         found = lines.gathered(price_lines(slate, lines, executor))
         found[output_row("theta")] += found[output_row("carry")]
         imply(slate, rows, found, executor)
+        guess(slate, rows, found, executor)
     refused = _refuse_unreachable(rows, found)
     for array in (found, rows):
         array.setflags(write=False)

@@ -25,7 +25,8 @@ SENSITIVITIES = (
     "theta",
 )
 # What only some rows have: the strips' sensitivities to the volatilities inside the delivery month, what is known of
-# the Yardstick's own error, and what a quoted premium implies (`implied_status` is an index into IMPLIED_WORDS).
+# the Yardstick's own error, what a quoted premium implies (`implied_status` is an index into IMPLIED_WORDS), and the
+# value with an estimated correlation one standard error lower and higher.
 EXTRAS = (
     "daily_vega_long",
     "daily_vega_short",
@@ -35,6 +36,8 @@ EXTRAS = (
     "implied_correlation",
     "implied_correlation_error",
     "implied_status",
+    "guess_low",
+    "guess_high",
 )
 IMPLIED_WORDS = ("solved", "below floor", "above ceiling", "not identified")
 OUTPUTS = (*(method.key for method in METHODS), "value", *SENSITIVITIES, *EXTRAS)

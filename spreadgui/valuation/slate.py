@@ -42,6 +42,7 @@ INPUTS = (
     "shift_long",
     "shift_short",
     "rate",
+    "correlation_error",
     "quoted_premium",
 )
 _INPUT_ROW = {key: row for row, key in enumerate(INPUTS)}
@@ -246,6 +247,7 @@ def _inputs_of(position: Position, resolved: ResolvedPosition) -> tuple[float, .
         resolved.shift_long,
         resolved.shift_short,
         resolved.rate,
+        resolved.correlation_error,
         math.nan if position.quoted_premium is None else position.quoted_premium,
     )
 

@@ -14,6 +14,7 @@ from spreadgui.book.records import Book
 from spreadgui.pricing.methods import method as method_of
 from spreadgui.valuation.column import ALL_ROWS, Column, exact_texts, screen_texts
 from spreadgui.valuation.columns import BY_COLUMN_KEY, VALUE_TABLE
+from spreadgui.valuation.guesses import guess_total
 from spreadgui.valuation.price import price_parts
 from spreadgui.valuation.results import LiveResults, State
 from spreadgui.valuation.shown import number_text
@@ -62,6 +63,7 @@ def json_text(valued: ValuedBook) -> str:
         "method": book.method,
         "book_value": valued.results.total_value(),
         "gap_tolerance": book.gap_tolerance,
+        "cost_of_guesses": guess_total(valued.slate, valued.results)[1],
         "beyond_tolerance": {
             trust.method.key: {"positions": trust.rows, "value": trust.value, "share": trust.share}
             for trust in _trusts(valued)
@@ -80,7 +82,19 @@ def summary_text(valued: ValuedBook) -> str:
     counts = ", ".join(f"{states.count(word)} {word}" for word in dict.fromkeys(states))
     total = f"Book value {number_text(valued.results.total_value(), 0)} {book.currency}".rstrip()
     lines += ["", f"{total} ({counts})", *_trust_lines(valued)]
+    lines += _guess_lines(valued)
     return "\n".join(lines)
+
+
+def _guess_lines(valued: ValuedBook) -> Iterator[str]:
+    """What the book owes to estimated correlations, where it has any."""
+    rows, cost, share = guess_total(valued.slate, valued.results)
+    if rows:
+        worth = f"{number_text(cost, 0)} {valued.slate.book.currency}".rstrip()
+        yield (
+            f"Estimated correlations are behind {rows} positions; all of them one standard error off the same way for "
+            f"the desk is {worth} from end to end, {100.0 * share:.1f} % of the book without signs"
+        )
 
 
 def _trusts(valued: ValuedBook) -> list[Trust]:

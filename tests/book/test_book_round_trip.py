@@ -14,7 +14,7 @@ from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
 from spreadgui.book.reading import parse_book, read_book
-from spreadgui.book.records import Blend, Book, Correlation, Mark, Market, Part, Position, Settles, ZeroPoint
+from spreadgui.book.records import Blend, Book, Correlation, Mark, Market, Part, Position, ZeroPoint
 from spreadgui.book.writing import book_bytes, write_book
 
 PATIENT = settings(deadline=None, max_examples=60, suppress_health_check=[HealthCheck.too_slow])
@@ -74,7 +74,6 @@ books = st.builds(
     note=words,
     markets=st.lists(markets, max_size=3).map(tuple),
     zero_curve=st.lists(st.builds(ZeroPoint, date=st.dates(), rate=finite), max_size=3).map(tuple),
-    settles=st.none() | st.builds(Settles, path=words, sha256=words),
     blends=st.lists(blends, max_size=2).map(tuple),
     correlations=st.lists(correlations, max_size=3).map(tuple),
     positions=st.lists(positions, max_size=4).map(tuple),
@@ -126,7 +125,7 @@ def test_the_file_is_json_that_any_reader_takes_with_one_record_a_line(book: Boo
     lines = written.count(b"\n")
     flat = len(book.positions) + len(book.correlations) + len(book.zero_curve)
     opened = sum(map(market_lines, book.markets)) + sum(map(blend_lines, book.blends))
-    assert lines == 1 + 15 + 1 + 5 + flat + opened
+    assert lines == 1 + 14 + 1 + 5 + flat + opened
 
 
 def market_lines(market: Market) -> int:

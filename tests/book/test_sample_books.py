@@ -70,7 +70,7 @@ def test_the_committed_schema_is_the_one_the_records_give() -> None:
 def test_the_schema_explains_every_record_and_every_entry() -> None:
     records = book_schema()["$defs"]
     assert set(records) == {
-        "Book", "Market", "Mark", "Blend", "Part", "ZeroPoint", "Settles", "Correlation", "Position",
+        "Book", "Market", "Mark", "Blend", "Part", "ZeroPoint", "Correlation", "Position",
     }  # fmt: skip
     for record in records.values():
         assert record["description"]
@@ -86,11 +86,11 @@ def test_a_sample_uses_only_the_entries_of_the_schema_and_all_it_requires(name: 
 def test_what_the_schema_requires_the_reader_requires() -> None:
     raw = json.loads(sample_book("one_spark").read_bytes())
     raw["blends"] = [{"name": "Mix", "unit": "CRN/MWh", "parts": [{"market": SOUTH, "weight": 1.0}]}]
-    raw["zero_curve"], raw["settles"] = [{"date": "2027-12-01", "rate": 0.03}], {"path": "a.csv", "sha256": "0" * 64}
+    raw["zero_curve"] = [{"date": "2027-12-01", "rate": 0.03}]
     places = {"Book": raw, "Market": raw["markets"][0], "Mark": raw["markets"][0]["marks"][0]}
     places |= {"Correlation": raw["correlations"][0], "Position": raw["positions"][0]}
     places |= {"Blend": raw["blends"][0], "Part": raw["blends"][0]["parts"][0]}
-    places |= {"ZeroPoint": raw["zero_curve"][0], "Settles": raw["settles"]}
+    places |= {"ZeroPoint": raw["zero_curve"][0]}
     for name, record in book_schema()["$defs"].items():
         for key in record["required"]:
             kept = places[name].pop(key)

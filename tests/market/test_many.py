@@ -70,13 +70,14 @@ def test_whatever_is_said_at_once_is_said_alone(some: list[Position]) -> None:
     assert differences(some, Quotes.of(BOOK), BOOK.valuation_date, BOOK.zero_rate) == []
 
 
-def test_the_demo_book_is_resolved_at_once_but_for_its_strips() -> None:
+def test_the_demo_book_is_resolved_at_once_but_for_its_strips_and_blends() -> None:
     book = read_book(sample_book("ardenmoor_winter"))
     quotes = Quotes.of(book)
     assert differences(list(book.positions), quotes, book.valuation_date, book.zero_rate) == []
     plain = resolve_many(book.positions, quotes, book.valuation_date, book.zero_rate).plain
-    once = np.array([position.exercise == "once" for position in book.positions])
-    assert plain.tolist() == once.tolist()
+    blends = {blend.name for blend in book.blends}
+    once = [one.exercise == "once" and not {one.long_leg, one.short_leg} & blends for one in book.positions]
+    assert plain.tolist() == once
 
 
 def test_ordinary_rows_are_all_plain_and_rows_with_a_trouble_are_not() -> None:

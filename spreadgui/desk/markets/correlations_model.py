@@ -33,7 +33,7 @@ _RIGHT = int(Qt.AlignmentFlag.AlignRight | Qt.AlignmentFlag.AlignVCenter)
 _READABLE = Qt.ItemFlag.ItemIsEnabled | Qt.ItemFlag.ItemIsSelectable
 _TIE = 0  # the place of the tie strengths; the markets follow
 _TIE_FIELD = Field("tie_strength", entries.NUMBER, "Tie strength", "")
-_PAIR_FIELD = Field("correlation", entries.CORRELATION, "Correlation", "", in_percent="from −100 to 100 %")
+_PAIR_FIELD = Field("correlation", entries.WORDS, "Correlation", "")
 
 
 @dataclass(frozen=True)
@@ -111,7 +111,8 @@ class CorrelationsModel(QAbstractTableModel):
         if pair is None:
             return Cell("", Look.ENTRY)
         look = Look.ENTRY if pair.standard_error is None else Look.OWN
-        return Cell(trimmed_text(100.0 * pair.correlation, 4, 1), look)
+        error = "" if pair.standard_error is None else f" ±{trimmed_text(100.0 * pair.standard_error, 2)}"
+        return Cell(trimmed_text(100.0 * pair.correlation, 4, 1) + error, look)
 
     def text_of(self, row: int, column: int) -> str:
         """What a cell shows."""
@@ -132,7 +133,10 @@ class CorrelationsModel(QAbstractTableModel):
         if index.column() == _TIE:
             return _TIE_FIELD.entry.text(self._market(index.row()).tie_strength)
         pair = self.pair(index)
-        return "" if pair is None else percent_text(pair.correlation)
+        if pair is None:
+            return ""
+        error = "" if pair.standard_error is None else f" ± {percent_text(pair.standard_error)}"
+        return percent_text(pair.correlation) + error
 
     def tip(self, index: Index) -> str:
         """What a pointer resting on a cell tells: the pair, and where its correlation came from."""
@@ -152,8 +156,12 @@ class CorrelationsModel(QAbstractTableModel):
             if index.column() == _TIE:
                 if entries.number(text) < 0.0:
                     return f"expected a tie strength of zero or more, got {quoted(text)}"
-            elif text.strip() and abs(number_in_percent(text)) > 1.0:
-                return f"expected a correlation from −100 to 100 %, got {quoted(text)}"
+            elif text.strip():
+                value, error = read_pair(text)
+                if abs(value) > 1.0:
+                    return f"expected a correlation from −100 to 100 %, got {quoted(text)}"
+                if error is not None and error < 0.0:
+                    return f"expected a standard error of 0 or more, got {quoted(text)}"
         except EntryError as error:
             return str(error)
         return ""
@@ -175,9 +183,9 @@ class CorrelationsModel(QAbstractTableModel):
 
     def _set_pair(self, index: Index, text: str) -> None:
         first, second = self._names[index.row()], self.columns[index.column()].heading
-        value = number_in_percent(text) if text.strip() else None
+        value, error = read_pair(text) if text.strip() else (None, None)
         book = self._workbench.book
-        pairs = with_correlation(book, first, second, value)
+        pairs = with_correlation(book, first, second, value, error)
         self._workbench.apply(set_book(book, "correlations", pairs, f"set the correlation of {first} and {second}"))
 
     def _look_up(self) -> None:
@@ -200,19 +208,26 @@ class CorrelationsModel(QAbstractTableModel):
             self.dataChanged.emit(self.index(0, 0), self.index(len(names) - 1, len(names)))
 
 
-def with_correlation(book: Book, first: str, second: str, value: float | None) -> tuple[Correlation, ...]:
-    """The book's correlations with one pair typed: put in its place, added at the end, or (None) taken out.
+def read_pair(text: str) -> tuple[float, float | None]:
+    """A correlation as it is typed, in per cent, with its standard error where one is given: "80" or "80 ± 4"; raises
+    EntryError."""
+    value, given, error = text.replace("+-", "±").replace("+/-", "±").partition("±")
+    return number_in_percent(value), number_in_percent(error) if given else None
 
-    One that is typed is no estimate any more.
-    """
+
+def with_correlation(
+    book: Book, first: str, second: str, value: float | None, error: float | None = None
+) -> tuple[Correlation, ...]:
+    """The book's correlations with one pair typed: put in its place, added at the end, or (None) taken out. Where it
+    came from before is forgotten."""
     wanted = frozenset((first, second))
     kept = [pair for pair in book.correlations if frozenset((pair.first, pair.second)) != wanted]
     if value is None:
         return tuple(kept)
     if len(kept) == len(book.correlations):
-        return (*kept, Correlation(first, second, value))
+        return (*kept, Correlation(first, second, value, error))
     return tuple(
-        msgspec.structs.replace(pair, correlation=value, standard_error=None, note="")
+        msgspec.structs.replace(pair, correlation=value, standard_error=error, note="")
         if frozenset((pair.first, pair.second)) == wanted
         else pair
         for pair in book.correlations

@@ -25,9 +25,11 @@ from spreadgui.desk.panels.reading_sheets import (
 )
 from spreadgui.desk.panels.sheet_view import PADDING, SheetView
 from spreadgui.desk.panels.sheets import Sheet
+from spreadgui.desk.panels.simulation_line import SimulationLine
 
 if TYPE_CHECKING:  # its module loads the formulas, which must not hold up the first paint of the window
     from spreadgui.valuation.reading import Reading
+    from spreadgui.valuation.simulated import SimulatedReading
 
 WAITING = "Pricing: these numbers are out of date."
 NO_POSITION = "Choose a position in the grid: its value by every method and its sensitivities stand here."
@@ -54,11 +56,12 @@ class ReadingPane(Pane):
         self._methods, self._sensitivities, self._parts, self._days = (SheetView(theme) for _ in range(4))
         for view, name in ((self._parts, "Parts"), (self._days, "Days")):
             view.setAccessibleName(name)
+        self.simulation = SimulationLine()
         self._quote = ElidedLabel()
         self._unfold = QToolButton()
         self._unfold.setCheckable(True)
         set_rank(self._quote, "small")
-        for part in (self._parts, self._days, self._unfold, self._quote):
+        for part in (self._parts, self.simulation, self._days, self._unfold, self._quote):
             part.hide()
         self._roll = _Roll()
         self._caution = ElidedLabel(CAUTION)
@@ -70,6 +73,8 @@ class ReadingPane(Pane):
 
     def show_reading(self, reading: Reading) -> None:
         """Show a position; one that could not be priced says why."""
+        if self._reading is None or (self._reading.row, self._reading.revision) != (reading.row, reading.revision):
+            self.simulation.rest()  # what was simulated was another position, or other marks
         self._reading, self._waiting = reading, False
         self.set_subtitle(reading.subject)
         if reading.reason:
@@ -82,6 +87,12 @@ class ReadingPane(Pane):
         self._fade(False)
         self.show_body()  # before the tables are fitted: only then is its size known
         self._fit()
+
+    def show_simulation(self, found: SimulatedReading) -> None:
+        """Show what a simulation came to, if it is still of this position under these marks."""
+        reading = self._reading
+        if reading is not None and (reading.row, reading.revision) == (found.row, found.revision):
+            self.simulation.show_result(found, reading.unit)
 
     def show_waiting(self) -> None:
         """What is shown is out of date: its ink is muted, and the line at the bottom says so."""
@@ -164,6 +175,7 @@ class ReadingPane(Pane):
         column.addWidget(self._methods)
         column.addWidget(self._sensitivities)
         column.addWidget(self._parts)
+        column.addWidget(self.simulation)
         column.addWidget(self._unfold, 0, Qt.AlignmentFlag.AlignLeft)
         column.addWidget(self._days)
         column.addStretch(1)
@@ -214,6 +226,7 @@ class ReadingPane(Pane):
         spare = max(self._roll.height() - self._height_of(sheets), 0) // rows
         shown = {sheet.name for sheet in sheets}
         self._parts.setVisible("Parts" in shown)
+        self.simulation.setVisible("Parts" in shown)
         self._days.setVisible("Days" in shown)
         for sheet in sheets:
             self._view_of(sheet).show_sheet(sheet, self._room(sheets), min(spare, _MOST_ROW_SPARE))
@@ -226,6 +239,8 @@ class ReadingPane(Pane):
     def _height_of(self, sheets: tuple[Sheet, ...]) -> int:
         heights = [self._view_of(sheet).needed_height(sheet) for sheet in sheets]
         unfolding = 0 if self._unfold.isHidden() else self._unfold.sizeHint().height() + _GAP
+        if any(sheet.name == "Parts" for sheet in sheets):
+            unfolding += self.simulation.sizeHint().height() + _GAP
         return sum(heights) + _GAP * (len(sheets) - 1) + unfolding
 
     @Slot(int)

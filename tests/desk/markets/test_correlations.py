@@ -146,3 +146,26 @@ def test_a_missing_pair_is_empty_and_typing_adds_it(desk: Desk, qtbot: QtBot) ->
     settle(qtbot, window)
     assert window.workbench.book.correlations[-1] == Correlation("North", "Quill", 0.555)
     assert shown(window, 2, "position_value") != "incomplete"
+
+
+def test_a_correlation_typed_with_its_standard_error_shows_what_the_guess_costs(desk: Desk, qtbot: QtBot) -> None:
+    window = desk.open(three_markets())
+    pane = pane_of(window)
+    assert shown(window, 0, "guess_band") == ""
+    pane.view.setCurrentIndex(pane.model.index(0, 2))
+    pane.view.edit(pane.view.currentIndex())
+    editor = QApplication.focusWidget()
+    assert isinstance(editor, QLineEdit)
+    editor.setText("80 ± 4")
+    qtbot.keyClick(editor, Qt.Key.Key_Return)
+    settle(qtbot, window)
+    assert window.workbench.book.correlations[0] == Correlation("North", "South", 0.8, 0.04)
+    assert pane.model.text_of(0, 2) == "80.0 ±4"
+    assert pane.model.typed(pane.model.index(0, 2)) == "80 ± 4"
+    assert shown(window, 0, "guess_band") != ""
+    assert shown(window, 1, "guess_band") == ""
+    assert agrees_with_its_book(window)
+    assert (
+        pane.model.refusal(pane.model.index(0, 2), "80 ± -1") == 'expected a standard error of 0 or more, got "80 ± -1"'
+    )
+    assert pane.model.refusal(pane.model.index(0, 2), "80 ± x") == 'expected a number, got "x"'

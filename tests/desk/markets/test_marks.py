@@ -57,8 +57,9 @@ def test_a_mark_typed_moves_the_rows_that_read_it_and_undo_brings_all_back(
     type_mark(qtbot, pane, "11.5")
     settle(qtbot, window)
     after = [shown(window, row, "position_value") for row in range(len(demo_book.positions))]
+    legs = {("Pellan gas point", "2028-01"), ("Quay 3 fuel", "2028-01"), ("Loomgate fuel", "2028-01")}
     reads = [
-        ("Pellan gas point", "2028-01") in ((one.long_leg, one.long_delivery), (one.short_leg, one.short_delivery))
+        bool({(one.long_leg, one.long_delivery), (one.short_leg, one.short_delivery)} & legs)
         for one in demo_book.positions
     ]
     assert 3 < sum(reads) < 15
